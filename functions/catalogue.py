@@ -281,12 +281,16 @@ class _Result:
 
     def sentence(self) -> str:
         """The first error in reading order, in words; empty when there is none."""
-        indices = [()] if self.shape == () else np.ndindex(*self.shape)
-        for index in indices:
-            error = self.error(index)
-            if error is not None:
-                return str(error)
-        return ""
+        codes = self._all_codes()
+        bad = np.zeros(self.shape, bool) if codes is None else codes != 0
+        if self.answer is not None and not self.entry.matrix:
+            values = np.asarray(self.answer.values)
+            if values.dtype.kind == "f" and not isinstance(self.answer.values, tuple):
+                bad |= ~np.isfinite(values)
+        if not bad.any():
+            return ""
+        first = tuple(int(i) for i in np.unravel_index(bad.argmax(), self.shape))
+        return str(self.error(first))
 
 
 def _plainly(raw: object, parameter: Parameter) -> str:
