@@ -273,7 +273,7 @@ class Number(Spec):
         return Argument(np.where(ok, cells, self.safe), cells, codes)
 
     def _convert_objects(self, cells: NDArray[Any], parameter: Parameter) -> Argument:
-        values = np.full(cells.shape, self.safe)
+        values = np.full(cells.shape, self.safe, dtype=np.float64)
         codes = np.zeros(cells.shape, dtype=np.uint16)
         for index, raw in np.ndenumerate(cells):
             try:
