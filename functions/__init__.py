@@ -1,6 +1,24 @@
 """The arithmetic of tausheet: plain array functions that are also cell functions."""
 
+from tausheet.functions.energy import (
+    c_for_energy,
+    dissipated,
+    energy_c,
+    energy_l,
+    i2t,
+    ride_through,
+)
 from tausheet.functions.response import step
 from tausheet.functions.service import reason, version
 
-__all__ = ["reason", "step", "version"]
+__all__ = [
+    "c_for_energy",
+    "dissipated",
+    "energy_c",
+    "energy_l",
+    "i2t",
+    "reason",
+    "ride_through",
+    "step",
+    "version",
+]

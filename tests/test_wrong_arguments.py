@@ -1,0 +1,152 @@
+"""Each argument of a cell function given wrongly: the right error, and a sentence that names it.
+
+The domains are written down here a second time, apart from the annotations they check.
+"""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import Any
+
+import pytest
+
+from tausheet.addin import cells
+from tausheet.functions.catalogue import CATALOGUE
+from tausheet.functions.errors import ErrorKind, error_kind
+
+VALUE, NUM = ErrorKind.VALUE, ErrorKind.NUM
+
+
+@dataclass(frozen=True)
+class Good:
+    """A call that works, and for each argument: its name, its domain, a good value."""
+
+    name: str
+    arguments: tuple[tuple[str, str, Any], ...]
+
+
+def good(name: str, *arguments: tuple[str, str, Any]) -> Good:
+    return Good(name, arguments)
+
+
+# domains: ">0", ">=0", "any", "word", "code"; a "?" after it means that it may be left out
+GOOD = [
+    good("FO_ENERGY_C", ("capacitance", ">0", 0.0047), ("voltage", "any", 680.0)),
+    good("FO_ENERGY_L", ("inductance", ">0", 1.5), ("current", "any", 8.0)),
+    good("FO_C_FOR_ENERGY", ("energy", ">0", 32.0), ("v_from", ">0", 100.0), ("v_to", ">=0", 60.0)),
+    good(
+        "FO_I2T",
+        ("tau", ">0", 0.5),
+        ("initial", "any", 10.0),
+        ("final", "any", 0.0),
+        ("t_from", "any?", 0.0),
+        ("t_to", "any?", 1.0),
+    ),
+    good(
+        "FO_DISSIPATED",
+        ("resistance", ">0", 100.0),
+        ("quantity", "word", "voltage"),
+        ("tau", ">0", 0.5),
+        ("initial", "any", 10.0),
+        ("final", "any", 0.0),
+        ("t_from", "any?", 0.0),
+        ("t_to", "any?", 1.0),
+    ),
+    good(
+        "FO_RIDE_THROUGH",
+        ("capacitance", ">0", 0.01),
+        ("v_from", ">0", 100.0),
+        ("v_to", ">=0", 60.0),
+        ("demand", ">0", 500.0),
+        ("kind", "word", "power"),
+        ("series_resistance", ">=0?", 0.5),
+    ),
+]
+
+WRONG: list[tuple[str, Any, dict[str, ErrorKind]]] = [
+    # what is wrong, the value, the kind of error for numbers, words and codes
+    ("negative", -1.0, {">0": NUM, ">=0": NUM, "word": VALUE, "code": VALUE}),
+    ("zero", 0.0, {">0": NUM, "word": VALUE, "code": VALUE}),
+    ("blank", None, dict.fromkeys((">0", ">=0", "any", "word", "code"), VALUE)),
+    ("empty text", "", dict.fromkeys((">0", ">=0", "any", "word", "code"), VALUE)),
+    ("text", "Quay 4", dict.fromkeys((">0", ">=0", "any", "word", "code"), VALUE)),
+    ("unit", "uF", dict.fromkeys((">0", ">=0", "any", "word"), VALUE)),
+    ("digits as text", "1E400", dict.fromkeys((">0", ">=0", "any", "word", "code"), VALUE)),
+    ("NaN", math.nan, {">0": NUM, ">=0": NUM, "any": NUM, "word": VALUE, "code": VALUE}),
+    ("infinity", math.inf, {">0": NUM, ">=0": NUM, "any": NUM, "word": VALUE, "code": VALUE}),
+    ("too large", 10**400, {">0": NUM, ">=0": NUM, "any": NUM, "word": VALUE, "code": VALUE}),
+    *(
+        (kind.text, kind, dict.fromkeys((">0", ">=0", "any", "word", "code"), kind))
+        for kind in ErrorKind
+    ),
+]
+
+CASES = [
+    pytest.param(call, index, value, kinds[base], id=f"{call.name}-{name}-{what}")
+    for call in GOOD
+    for index, (name, domain, _) in enumerate(call.arguments)
+    for base in [domain.rstrip("?")]
+    for what, value, kinds in WRONG
+    if base in kinds and not (domain.endswith("?") and value in (None, ""))
+]
+
+
+def result(name: str, arguments: list[Any]) -> Any:
+    return cells.call(name, arguments)
+
+
+@pytest.mark.parametrize("call", GOOD, ids=lambda call: call.name)
+def test_the_good_call_works_and_has_no_reason(call: Good) -> None:
+    arguments = [value for _, _, value in call.arguments]
+    assert [p.name for p in CATALOGUE[call.name].parameters] == [n for n, _, _ in call.arguments]
+    value = result(call.name, arguments)
+    assert isinstance(value, str) or error_kind(value) is None
+    assert CATALOGUE[call.name].reason(arguments) == ""
+
+
+@pytest.mark.parametrize(("call", "index", "value", "kind"), CASES)
+def test_one_wrong_argument(call: Good, index: int, value: Any, kind: ErrorKind) -> None:
+    arguments = [good_value for _, _, good_value in call.arguments]
+    arguments[index] = value
+    assert error_kind(result(call.name, arguments)) is kind
+    sentence = CATALOGUE[call.name].reason(arguments)
+    assert sentence.startswith(f"{call.name}: {call.arguments[index][0]} ")
+    assert "{" not in sentence
+
+
+@pytest.mark.parametrize("call", GOOD, ids=lambda call: call.name)
+def test_optional_arguments_may_be_blank(call: Good) -> None:
+    required = [value for _, domain, value in call.arguments if not domain.endswith("?")]
+    blanks: list[Any] = [None] * (len(call.arguments) - len(required))
+    assert result(call.name, [*required, *blanks]) == result(call.name, required)
+
+
+ELEMENTWISE = [
+    call
+    for call in GOOD
+    if sum(domain.rstrip("?") in (">0", ">=0", "any", "code") for _, domain, _ in call.arguments)
+    > 1
+]
+
+
+@pytest.mark.parametrize("call", ELEMENTWISE, ids=lambda call: call.name)
+def test_ranges_that_do_not_fit_together(call: Good) -> None:
+    arguments = [value for _, _, value in call.arguments]
+    spots = [i for i, (_, domain, _) in enumerate(call.arguments) if domain != "word"]
+    arguments[spots[0]] = [[arguments[spots[0]]]] * 3
+    arguments[spots[1]] = [[arguments[spots[1]]]] * 2
+    assert error_kind(result(call.name, arguments)) is VALUE
+    sentence = CATALOGUE[call.name].reason(arguments)
+    assert call.arguments[spots[0]][0] in sentence
+    assert call.arguments[spots[1]][0] in sentence
+
+
+@pytest.mark.parametrize("call", GOOD, ids=lambda call: call.name)
+def test_in_a_range_only_the_wrong_element_is_an_error(call: Good) -> None:
+    arguments = [value for _, _, value in call.arguments]
+    alone = result(call.name, arguments)
+    spot = next(i for i, (_, domain, _) in enumerate(call.arguments) if domain != "word")
+    arguments[spot] = [[arguments[spot]], [None], [arguments[spot]], [ErrorKind.NAME]]
+    column = cells.plain_grid(result(call.name, arguments))
+    assert column == [[alone], [VALUE], [alone], [ErrorKind.NAME]]
