@@ -10,10 +10,13 @@ from tausheet.functions.energy import (
 )
 from tausheet.functions.response import step
 from tausheet.functions.service import reason, version
+from tausheet.functions.tolerance import corners, draw
 
 __all__ = [
     "c_for_energy",
+    "corners",
     "dissipated",
+    "draw",
     "energy_c",
     "energy_l",
     "i2t",
