@@ -11,6 +11,7 @@ from tausheet.functions.energy import (
 from tausheet.functions.response import step
 from tausheet.functions.service import reason, version
 from tausheet.functions.tolerance import corners, draw
+from tausheet.functions.units import in_unit, si, text
 
 __all__ = [
     "c_for_energy",
@@ -20,8 +21,11 @@ __all__ = [
     "energy_c",
     "energy_l",
     "i2t",
+    "in_unit",
     "reason",
     "ride_through",
+    "si",
     "step",
+    "text",
     "version",
 ]
