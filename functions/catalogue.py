@@ -217,7 +217,7 @@ class _Result:
             codes = self._all_codes()
             if codes is not None:
                 for index in np.argwhere(codes):
-                    array[tuple(index)] = float(nan_of(codes[tuple(index)]))
+                    array[tuple(index)] = float(nan_of(codes[tuple(index)] & ~np.uint16(PASSED)))
             return array.item() if self.shape == () else array
         matrix = self.entry.matrix
         shape = array.shape if matrix else self.shape
