@@ -8,6 +8,7 @@ from tausheet.functions.energy import (
     i2t,
     ride_through,
 )
+from tausheet.functions.parts import preferred, rkm, rkm_text
 from tausheet.functions.response import step
 from tausheet.functions.service import reason, version
 from tausheet.functions.tolerance import corners, draw
@@ -22,8 +23,11 @@ __all__ = [
     "energy_l",
     "i2t",
     "in_unit",
+    "preferred",
     "reason",
     "ride_through",
+    "rkm",
+    "rkm_text",
     "si",
     "step",
     "text",

@@ -153,7 +153,7 @@ def _converted(value: float, over: int, under: int) -> float:
     return float(exact)
 
 
-def _each(values: Any, units: NDArray[Any], use: Callable[[float, str], Any]) -> Answer:
+def _each(values: Any, units: NDArray[Any], use: Callable[[Any, str], Any]) -> Answer:
     """`use` each value with its unit; an unknown unit is refused."""
     values, units = np.broadcast_arrays(values, units)
     spellings = {unit: canonical(unit) for unit in set(units.ravel().tolist())}
