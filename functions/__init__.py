@@ -8,28 +8,39 @@ from tausheet.functions.energy import (
     i2t,
     ride_through,
 )
+from tausheet.functions.frequency import corner_frequency, gain_db, noise_bandwidth, phase, tau_at
+from tausheet.functions.overload import trip_time
 from tausheet.functions.parts import preferred, rkm, rkm_text
+from tausheet.functions.periodic import Ripple, ripple
 from tausheet.functions.response import step
 from tausheet.functions.service import reason, version
 from tausheet.functions.tolerance import corners, draw
 from tausheet.functions.units import in_unit, si, text
 
 __all__ = [
+    "Ripple",
     "c_for_energy",
+    "corner_frequency",
     "corners",
     "dissipated",
     "draw",
     "energy_c",
     "energy_l",
+    "gain_db",
     "i2t",
     "in_unit",
+    "noise_bandwidth",
+    "phase",
     "preferred",
     "reason",
     "ride_through",
+    "ripple",
     "rkm",
     "rkm_text",
     "si",
     "step",
+    "tau_at",
     "text",
+    "trip_time",
     "version",
 ]
