@@ -8,6 +8,7 @@ from tausheet.functions.energy import (
     i2t,
     ride_through,
 )
+from tausheet.functions.fault import dc_offset, dc_worst, fault_current, fault_i2t, peak_factor
 from tausheet.functions.frequency import corner_frequency, gain_db, noise_bandwidth, phase, tau_at
 from tausheet.functions.overload import trip_time
 from tausheet.functions.parts import preferred, rkm, rkm_text
@@ -22,14 +23,19 @@ __all__ = [
     "c_for_energy",
     "corner_frequency",
     "corners",
+    "dc_offset",
+    "dc_worst",
     "dissipated",
     "draw",
     "energy_c",
     "energy_l",
+    "fault_current",
+    "fault_i2t",
     "gain_db",
     "i2t",
     "in_unit",
     "noise_bandwidth",
+    "peak_factor",
     "phase",
     "preferred",
     "reason",

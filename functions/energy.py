@@ -17,7 +17,7 @@ from tausheet.functions.arguments import (
 )
 from tausheet.functions.catalogue import Answer, cell_function
 from tausheet.functions.errors import DomainError, NotAvailable
-from tausheet.functions.exact import Array, sum_of_products
+from tausheet.functions.exact import Array, lag_integrals, sum_of_products
 
 
 @cell_function("FO_ENERGY_C", "Energy and integrals")
@@ -222,27 +222,13 @@ def square_integral(tau: Array, initial: Array, final: Array, t_from: Array, t_t
     )
     gap = final - y0
     short = np.minimum(h, 1.5)
-    p1, p2 = _lag_integrals(short)
+    p1, p2 = lag_integrals(short)
     in_short = y0 * y0 * (short * tau) + tau * gap * (2 * y0 * p1 + gap * p2)
     q = -np.expm1(-h)
     steady = np.where(final == 0, 0.0, final * final * length)
     in_long = steady - tau * gap * q * (2 * final - gap * (1 - q / 2))
     result: Array = initial * initial * before + np.where(h < 1.5, in_short, in_long)
     return result
-
-
-def _lag_integrals(h: Array) -> tuple[Array, Array]:
-    """Integrals from 0 to h of 1 - exp(-s) and of its square, each to full relative precision."""
-    q = -np.expm1(-h)
-    p1, p2 = h - q, h - q - q * q / 2
-    s = np.minimum(h, 0.5)
-    term = -s
-    series1, series2 = np.zeros_like(s), np.zeros_like(s)
-    for n in range(2, 20):
-        term = term * -s / n
-        series1 = series1 + term
-        series2 = series2 + term * s * (2.0**n - 2) / (n + 1)
-    return np.where(h < 0.5, series1, p1), np.where(h < 0.5, series2, p2)
 
 
 @cell_function("FO_RIDE_THROUGH", "Energy and integrals")

@@ -1,4 +1,4 @@
-"""Sums of products in twice the working precision, for differences that nearly cancel."""
+"""Arithmetic that keeps its digits where the plain form cancels."""
 
 from __future__ import annotations
 
@@ -47,3 +47,33 @@ def sum_of_products(*pairs: tuple[Any, Any]) -> Array:
         carry = carry + (sum_error + product_error)
     result: Array = np.asarray(total + carry)
     return result
+
+
+def fraction_of_product(a: Any, b: Any) -> Array:
+    """a b less the nearest whole number, from -0.5 to 0.5: the part of a turn, however many."""
+    product, error = two_product(a, b)
+    result: Array = np.asarray((product - np.rint(product)) + error)
+    return result
+
+
+def lag_integrals(h: Array) -> tuple[Array, Array]:
+    """Integrals from 0 to h of 1 - exp(-s) and of its square, each to full relative precision."""
+    q = -np.expm1(-h)
+    p1, p2 = h - q, h - q - q * q / 2
+    s = np.minimum(h, 0.5)
+    term = -s
+    series1, series2 = np.zeros_like(s), np.zeros_like(s)
+    for n in range(2, 20):
+        term = term * -s / n
+        series1 = series1 + term
+        series2 = series2 + term * s * (2.0**n - 2) / (n + 1)
+    return np.where(h < 0.5, series1, p1), np.where(h < 0.5, series2, p2)
+
+
+def excess_over_sine(x: Array) -> Array:
+    """x - sin(x) for x >= 0, to full relative precision."""
+    s = np.minimum(x, 1.0)
+    series = np.zeros_like(s)
+    for n in range(18, 2, -2):  # nested: s^3/3! (1 - s^2/(4 5) (1 - s^2/(6 7) (...)))
+        series = s * s / (n * (n + 1)) * (1 - series)
+    return np.where(x < 1, s * (s * s / 6) * (1 - series), x - np.sin(x))

@@ -109,6 +109,42 @@ GOOD = [
         ("prior", ">=0", 0.0),
         ("current", ">=0", 200.0),
     ),
+    good(
+        "FO_FAULT_CURRENT",
+        ("t", "any", 0.01),
+        ("rms", ">0", 10000.0),
+        ("resistance", ">=0", 0.1),
+        ("reactance", ">=0", 1.0),
+        ("frequency", ">0", 50.0),
+        ("closing_angle", "any?", 0.0),
+    ),
+    good(
+        "FO_DC_OFFSET",
+        ("t", "any", 0.01),
+        ("rms", ">0", 10000.0),
+        ("resistance", ">=0", 0.1),
+        ("reactance", ">=0", 1.0),
+        ("frequency", ">0", 50.0),
+        ("closing_angle", "any", 0.0),
+    ),
+    good(
+        "FO_DC_WORST",
+        ("t", "any", 0.01),
+        ("rms", ">0", 10000.0),
+        ("resistance", ">=0", 0.1),
+        ("reactance", ">=0", 1.0),
+        ("frequency", ">0", 50.0),
+    ),
+    good("FO_PEAK_FACTOR", ("resistance", ">=0", 0.1), ("reactance", ">=0", 1.0)),
+    good(
+        "FO_FAULT_I2T",
+        ("rms", ">0", 10000.0),
+        ("resistance", ">=0", 0.1),
+        ("reactance", ">=0", 1.0),
+        ("frequency", ">0", 50.0),
+        ("closing_angle", "any", 0.0),
+        ("t_to", ">0", 0.02),
+    ),
 ]
 
 NUMBERS = (">0", ">=0", "0..1", "any")
