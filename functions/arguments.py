@@ -63,10 +63,12 @@ class Argument:
     value: Any
     source: Any
     codes: NDArray[np.uint16] | None = None
+    whole: bool = False
+    """Taken as one thing (a column, a table, a single cell) that does not broadcast."""
 
     def element(self, index: tuple[int, ...], shape: tuple[int, ...]) -> object:
         """What the caller passed for one element of the broadcast shape."""
-        if not isinstance(self.source, np.ndarray):
+        if self.whole or not isinstance(self.source, np.ndarray):
             return self.source
         return np.broadcast_to(self.source, shape)[index]
 
@@ -143,9 +145,9 @@ class Spec:
     def convert(self, raw: object, parameter: Parameter) -> Argument:
         """Whatever the caller passed, converted as a whole."""
         try:
-            return Argument(self.element(raw, parameter), raw)
+            return Argument(self.element(raw, parameter), raw, whole=True)
         except CellError as error:
-            return Argument(None, raw, _code(error))
+            return Argument(None, raw, _code(error), whole=True)
 
     def wrong(self, raw: object, parameter: Parameter, kind: type[CellError]) -> CellError:
         """The error that names the argument, the value, what is allowed and what to do."""
@@ -243,8 +245,8 @@ class Number(Spec):
             try:
                 value: Any = self.element(raw, parameter)
             except CellError as error:
-                return Argument(np.float64(self.safe), raw, _code(error))
-            return Argument(np.float64(value), raw)
+                return Argument(np.float64(self.safe), raw, _code(error), whole=True)
+            return Argument(np.float64(value), raw, whole=True)
         try:
             cells = grid(raw)
         except CellError as error:

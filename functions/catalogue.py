@@ -34,6 +34,7 @@ from tausheet.functions.arguments import (
     Parameter,
     Spec,
     is_blank,
+    is_range,
     shown,
 )
 from tausheet.functions.errors import CellError, DomainError, InputError, error_codes, nan_of
@@ -296,7 +297,7 @@ class _Result:
 def _plainly(raw: object, parameter: Parameter) -> str:
     if is_blank(raw):
         return shown(parameter.default)
-    if isinstance(raw, (list, tuple)):
+    if is_range(raw):
         return "the range"
     return raw if isinstance(raw, str) else shown(raw)
 

@@ -171,6 +171,7 @@ def test_at_most_twelve_parts_in_a_corner_table() -> None:
         ((None,), ErrorKind.VALUE, "count is blank"),
         (("x",), ErrorKind.VALUE, 'count is the text "x"'),
         (([3, 3],), ErrorKind.VALUE, "is a range of 2 cells"),
+        ((np.array([3.0, 3.0]),), ErrorKind.VALUE, "is a range of 2 cells"),
         ((3, "gauss"), ErrorKind.VALUE, 'distribution is the text "gauss"; allowed: "uniform"'),
         ((3, 7), ErrorKind.VALUE, "distribution is 7"),
         ((3, ["normal", "normal"]), ErrorKind.VALUE, "distribution is a range of 2 cells"),
