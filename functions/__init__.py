@@ -9,6 +9,7 @@ from tausheet.functions.energy import (
     ride_through,
 )
 from tausheet.functions.fault import dc_offset, dc_worst, fault_current, fault_i2t, peak_factor
+from tausheet.functions.fit import Fit, FitFrom, fit, fit_from
 from tausheet.functions.frequency import corner_frequency, gain_db, noise_bandwidth, phase, tau_at
 from tausheet.functions.overload import trip_time
 from tausheet.functions.parts import preferred, rkm, rkm_text
@@ -19,6 +20,8 @@ from tausheet.functions.tolerance import corners, draw
 from tausheet.functions.units import in_unit, si, text
 
 __all__ = [
+    "Fit",
+    "FitFrom",
     "Ripple",
     "c_for_energy",
     "corner_frequency",
@@ -31,6 +34,8 @@ __all__ = [
     "energy_l",
     "fault_current",
     "fault_i2t",
+    "fit",
+    "fit_from",
     "gain_db",
     "i2t",
     "in_unit",
