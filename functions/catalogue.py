@@ -144,7 +144,7 @@ def _describe(
             variadic = True
             default = None
         parameters.append(Parameter(parameter.name, spec, default, helps.get(parameter.name, "")))
-    summary = " ".join(text.split("\n\n")[0].split())
+    summary = " ".join(text.split("\n\n")[0].replace("`", "").split())
     return CellFunction(
         name,
         group,
