@@ -1,0 +1,1 @@
+"""Excel through xlwings: registration, the add-in file, its installation and repair."""

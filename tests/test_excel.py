@@ -1,0 +1,247 @@
+"""Excel up to its door: xlwings' real registration, generator and call code, Windows replaced.
+
+What only a real Excel can show is listed in DEVELOPERS.md and settled by tests/on_windows.
+"""
+
+from __future__ import annotations
+
+import datetime
+import re
+import time
+from decimal import Decimal
+from pathlib import Path
+from typing import Any
+
+import pytest
+import windows_stand_in as windows
+from oletools.olevba import VBA_Parser
+
+from tausheet.addin import cells
+from tausheet.addin.excel import addin_file, installation, names, registration, wrappers
+from tausheet.functions.catalogue import CATALOGUE
+from tausheet.functions.errors import ErrorKind, TausheetError
+
+XLWINGS = windows.install()
+PYTHON = r"C:\Users\engineer\venv\Scripts\python.exe"
+NUMBER = {kind: registration.ERROR_BASE + n for kind, n in registration.EXCEL_NUMBERS.items()}
+BLANK = windows.Range(None)
+
+
+def excel(function: str, *arguments: Any) -> Any:
+    return windows.call(wrappers.PYTHON_MODULE, function, *arguments)
+
+
+@pytest.fixture(scope="module")
+def built(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    path = tmp_path_factory.mktemp("addin") / addin_file.FILE_NAME
+    addin_file.make(path, PYTHON, XLWINGS.udfs)
+    return path
+
+
+@pytest.fixture(scope="module")
+def sources(built: Path) -> dict[str, str]:
+    parser = VBA_Parser(str(built))
+    return {name: code for _, _, name, code in parser.extract_macros()}
+
+
+def test_every_function_of_the_catalogue_is_registered_with_its_help() -> None:
+    excel("FO_VERSION")
+    import tausheet.addin.excel.worksheet_functions as module
+
+    for name, entry in CATALOGUE.items():
+        info = getattr(module, name).__xlfunc__
+        assert info["category"] == f"tausheet: {entry.group}"
+        assert info["call_in_wizard"] is True
+        assert info["ret"]["doc"] == entry.summary
+        assert [a["name"] for a in info["args"]] == [p.name for p in entry.parameters]
+        for argument, parameter in zip(info["args"], entry.parameters, strict=True):
+            assert argument["doc"].startswith(parameter.help)
+            assert argument["options"] == {"convert": "raw"}
+
+
+def test_every_name_can_be_used_in_excel() -> None:
+    for entry in CATALOGUE.values():
+        registration.check_names(entry)
+        assert len(entry.summary) <= names.LONGEST_DESCRIPTION
+        for parameter in entry.parameters:
+            whole = f"{parameter.help} (required)"
+            assert len(whole) <= names.LONGEST_DESCRIPTION, f"{entry.name}: {parameter.name}"
+    assert names.collisions(CATALOGUE, ["xlwings", wrappers.MODULE, "Dictionary", "Module1"]) == []
+
+
+@pytest.mark.parametrize(
+    ("function", "arguments", "sentence"),
+    [
+        ("FO_X", ["End"], "reserved word of VBA"),
+        ("FO_X", ["step"], "reads differently"),
+        ("FO_X", ["xlpy"], "used by the generated wrapper"),
+        ("FO_X", ["a b"], "not a VBA identifier"),
+        ("FO1", ["a"], "reads as a cell address"),
+        ("R1C1", ["a"], "reads as a cell address"),
+        ("FO_X", ["a", "A"], "differ only by case"),
+        ("FO_X", ["fo_x"], "the function's name"),
+        ("FO_X", [f"a{i}" for i in range(61)], "61 arguments"),
+        ("FO_X", ["a" * 130, "b" * 130], "too long together"),
+    ],
+)
+def test_a_name_that_excel_misreads_is_refused(
+    function: str, arguments: list[str], sentence: str
+) -> None:
+    found = names.problems(function, arguments, variadic=False, optional=0)
+    assert any(sentence in problem for problem in found)
+
+
+def test_optional_and_variable_arguments_do_not_mix() -> None:
+    assert names.problems("FO_X", ["a"], variadic=True, optional=1)
+    assert names.collisions(["FO_A", "fo_a"], []) == ["fo_a collides with the function FO_A"]
+
+
+@pytest.mark.parametrize(
+    ("argument", "expected"),
+    [
+        (windows.Range(2.0), 2.0),
+        (2.0, 2.0),
+        (windows.Range(Decimal("2")), 2.0),
+        (windows.Range(True), 1.0),
+        (windows.Range(windows.PyTime(1900, 1, 1, tzinfo=datetime.timezone.utc)), 2.0),
+        (windows.Range(windows.PyTime(1899, 12, 30, 12)), 0.5),
+    ],
+)
+def test_numbers_arrive_as_their_values(argument: Any, expected: float) -> None:
+    got = excel("FO_STEP", argument, 1.0, 0.0, 5.0, windows.MISSING)
+    assert got == cells.call("FO_STEP", [expected, 1.0, 0.0, 5.0])
+
+
+def test_blanks_left_out_arguments_and_texts_keep_their_meaning() -> None:
+    assert excel("FO_STEP", BLANK, 1.0, 0.0, 5.0) == NUMBER[ErrorKind.VALUE]
+    assert excel("FO_STEP", 1.0, 1.0, 0.0, 5.0, BLANK) == excel("FO_STEP", 1.0, 1.0, 0.0, 5.0)
+    assert excel("FO_STEP", windows.Range(""), 1.0, 0.0, 5.0) == NUMBER[ErrorKind.VALUE]
+    assert excel("FO_STEP", windows.Range("5"), 1.0, 0.0, 5.0) == NUMBER[ErrorKind.VALUE]
+
+
+@pytest.mark.parametrize("kind", list(ErrorKind))
+def test_an_error_cell_comes_out_unchanged_alone_and_in_a_range(kind: ErrorKind) -> None:
+    assert excel("FO_STEP", 1.0, windows.Range(NUMBER[kind]), 0.0, 5.0) == NUMBER[kind]
+    column = windows.Range(((1.0,), (NUMBER[kind],)))
+    assert excel("FO_STEP", column, 1.0, 0.0, 5.0)[1] == [NUMBER[kind]]
+
+
+def test_an_error_of_a_newer_excel_is_an_error_too() -> None:
+    spilled = registration.ERROR_BASE + 2045
+    assert excel("FO_STEP", windows.Range(spilled), 1.0, 0.0, 5.0) == NUMBER[ErrorKind.VALUE]
+
+
+def test_ranges_and_array_constants_broadcast() -> None:
+    column = windows.Range(((0.0,), (1.0,)))
+    table = excel("FO_STEP", column, (1.0, 2.0, 4.0), 0.0, 5.0)
+    assert table[1] == [cells.call("FO_STEP", [1.0, tau, 0.0, 5.0]) for tau in (1.0, 2.0, 4.0)]
+    assert excel("FO_STEP", column, ((1.0,), (2.0,), (3.0,)), 0.0, 5.0) == NUMBER[ErrorKind.VALUE]
+
+
+def test_reason_takes_any_number_of_arguments() -> None:
+    sentence = excel("FO_REASON", "FO_STEP", windows.Range(1.0), windows.Range(0.0), 0.0, 5.0)
+    assert sentence.startswith("FO_STEP: tau is 0;")
+    assert excel("FO_REASON", "FO_STEP", 1.0, 1.0, 0.0, 5.0) == ""
+
+
+def test_a_call_that_hangs_gives_an_error_and_the_next_one_works(
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    entry = CATALOGUE["FO_STEP"]
+    hanging = entry.__class__(**{**vars(entry), "function": lambda *_: time.sleep(1.5)})
+    monkeypatch.setattr(registration, "TIME_LIMIT", 0.2)
+    monkeypatch.setitem(CATALOGUE, "FO_STEP", hanging)
+    assert excel("FO_STEP", 1.0, 1.0, 0.0, 5.0) == NUMBER[ErrorKind.VALUE]
+    monkeypatch.undo()
+    assert excel("FO_STEP", 1.0, 1.0, 0.0, 5.0) == cells.call("FO_STEP", [1.0, 1.0, 0.0, 5.0])
+
+
+def test_the_wrappers_return_real_errors_and_hand_no_workbook_over(sources: dict[str, str]) -> None:
+    text = sources[f"{wrappers.MODULE}.bas"]
+    for name in CATALOGUE:
+        body = re.search(rf"(?ms)^Function {name}\(.*?^End Function", text)
+        assert body is not None, name
+        assert body[0].count("InCells(XLPy.CallUDF(") == 2
+        assert body[0].count("ErrorFrom(Err.Description)") == 1
+    assert "ActiveWorkbook" not in text
+    assert "Err.Description)" in text
+    assert "= Err.Description" not in text
+
+
+def test_no_workbook_can_choose_what_runs(sources: dict[str, str]) -> None:
+    text = sources["xlwings.bas"]
+    assert 'PROJECT_NAME As String = "tausheet"' in text
+    assert "SheetExists(ActiveWorkbook, PROJECT_NAME" not in text
+    config = re.search(r"(?ms)^Function GetConfig\(.*?^End Function", text)
+    assert config is not None
+    assert config[0].count("If False Then") == 3
+    command = re.search(r"(?ms)^Function XLPyCommand\(.*?^End Function", text)
+    assert command is not None
+    assert 'PYTHONPATH = "false;;;;;"' in command[0]
+    assert "ActiveWorkbook" not in command[0]
+    assert " -I -B -c " in command[0]
+
+
+def test_what_the_command_line_makes_of_the_path_adds_nothing() -> None:
+    import sys
+
+    from xlwings.utils import prepare_sys_path
+
+    before = list(sys.path)
+    prepare_sys_path("false;;;;;")
+    assert sys.path == before
+
+
+def test_the_file_says_what_it_was_made_from(built: Path) -> None:
+    found = addin_file.read_configuration(built)
+    assert found["INTERPRETER_WIN"] == r"C:\Users\engineer\venv\Scripts\pythonw.exe"
+    assert found["UDF MODULES"] == "tausheet.addin.excel.worksheet_functions"
+    assert installation.status(built) == [installation.status(built)[0]]
+    assert '"tausheet"' in found[addin_file.STAMP]
+
+
+def test_status_asks_for_a_repair_when_the_versions_differ(
+    built: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(addin_file, "stamp", lambda source: "another")
+    assert "needs a repair" in installation.status(built)[1]
+
+
+def test_the_same_input_gives_the_same_file(built: Path, tmp_path: Path) -> None:
+    again = tmp_path / "again.xlam"
+    addin_file.make(again, PYTHON, XLWINGS.udfs)
+    assert again.read_bytes() == built.read_bytes()
+
+
+@pytest.mark.parametrize("bad", ["python", r"C:\a;b\python.exe", r"%TEMP%\python.exe", ""])
+def test_an_interpreter_that_is_no_plain_full_path_is_refused(bad: str, tmp_path: Path) -> None:
+    with pytest.raises(TausheetError, match="full Windows path"):
+        addin_file.make(tmp_path / "x.xlam", bad, XLWINGS.udfs)
+
+
+def test_elsewhere_one_sentence_says_why_not(tmp_path: Path) -> None:
+    with pytest.raises(TausheetError, match="Windows only"):
+        installation.install()
+    with pytest.raises(TausheetError, match="Windows only"):
+        installation.uninstall()
+    with pytest.raises(TausheetError, match="--interpreter"):
+        installation.install(to=tmp_path / "x.xlam")
+    assert "Windows only" in installation.status()[0]
+
+
+def test_the_file_is_written_for_carrying_over_and_never_over_another(tmp_path: Path) -> None:
+    out = tmp_path / "carried.xlam"
+    out.write_text("mine")
+    with pytest.raises(TausheetError, match="--force"):
+        installation.install(to=out, interpreter=PYTHON)
+    assert out.read_text() == "mine"
+    assert "open it in Excel" in installation.install(to=out, interpreter=PYTHON, force=True)
+    assert [path.name for path in tmp_path.iterdir()] == ["carried.xlam"]
+
+
+@pytest.mark.parametrize("content", [b"", b"not a zip", b"PK\x03\x04 broken"])
+def test_a_file_that_is_no_add_in_is_said_to_be_none(content: bytes, tmp_path: Path) -> None:
+    path = tmp_path / "x.xlam"
+    path.write_bytes(content)
+    with pytest.raises(TausheetError, match="not an add-in file"):
+        addin_file.read_configuration(path)
