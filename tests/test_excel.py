@@ -10,6 +10,7 @@ import re
 import time
 from decimal import Decimal
 from pathlib import Path
+from types import SimpleNamespace
 from typing import Any
 
 import pytest
@@ -18,6 +19,7 @@ from oletools.olevba import VBA_Parser
 
 from tausheet.addin import cells
 from tausheet.addin.excel import addin_file, installation, names, registration, wrappers
+from tausheet.addin.excel.refresh import refresh_app, relinked
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import ErrorKind, TausheetError
 
@@ -245,3 +247,45 @@ def test_a_file_that_is_no_add_in_is_said_to_be_none(content: bytes, tmp_path: P
     path.write_bytes(content)
     with pytest.raises(TausheetError, match="not an add-in file"):
         addin_file.read_configuration(path)
+
+
+@pytest.mark.parametrize(
+    ("found", "entered"),
+    [
+        ("=FO_STEP(A1,1,0,5)", "=FO_STEP(A1,1,0,5)"),
+        (r"='C:\Users\x\XLSTART\tausheet.xlam'!FO_STEP(A1,1,0,5)", "=FO_STEP(A1,1,0,5)"),
+        ("=tausheet.xlam!FO_STEP(1)+[1]!fo_step(2)", "=FO_STEP(1)+fo_step(2)"),
+        ("=_xludf.FO_STEP(1)*@FO_TAU_RC(1,2)", "=FO_STEP(1)*FO_TAU_RC(1,2)"),
+        ('="[1]!FO_STEP(" & [2]!Other(1)', '="[1]!FO_STEP(" & [2]!Other(1)'),
+    ],
+)
+def test_our_functions_are_entered_by_their_plain_names(found: str, entered: str) -> None:
+    assert relinked(found) == entered
+
+
+class Cell:
+    def __init__(self, formula: str, array: Any = None) -> None:
+        self.HasFormula = formula.startswith("=")
+        self.Formula = self.Formula2 = formula
+        self.HasArray, self.CurrentArray = array is not None, array
+        self.api = self
+
+
+def test_refresh_enters_each_formula_once_and_computes_everything() -> None:
+    array = SimpleNamespace(Address="$B$1:$B$2", FormulaArray=None)
+    cells_of_the_sheet = [
+        Cell("=[1]!FO_STEP(1,1,0,5)"),
+        Cell("=SUM(A1:A2)"),
+        Cell("5"),
+        Cell("=_xludf.FO_STEP(A1:A2,1,0,5)", array),
+        Cell("=_xludf.FO_STEP(A1:A2,1,0,5)", array),
+    ]
+    rebuilt = []
+    api = SimpleNamespace(Calculation=-4105, CalculateFullRebuild=lambda: rebuilt.append(True))
+    sheet = SimpleNamespace(name="S", used_range=cells_of_the_sheet)
+    app = SimpleNamespace(api=api, books=[SimpleNamespace(sheets=[sheet])])
+    assert refresh_app(app) == 2
+    assert cells_of_the_sheet[0].Formula2 == "=FO_STEP(1,1,0,5)"
+    assert cells_of_the_sheet[1].Formula2 == "=SUM(A1:A2)"
+    assert array.FormulaArray == "=FO_STEP(A1:A2,1,0,5)"
+    assert (api.Calculation, rebuilt) == (-4105, [True])
