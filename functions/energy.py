@@ -286,8 +286,10 @@ _STARTS_BELOW = (
 def _into_resistance(c: Array, v_from: Array, v_to: Array, load: Array, series: Array) -> Answer:
     excess = sum_of_products((v_from, load), (-v_to, load), (-v_to, series))
     total = series + load
+    over = excess / total / v_to
+    far = np.log(v_from * (load / total)) - np.log(v_to)
     return (
-        Answer(total * c * np.log1p(excess / (v_to * total)))
+        Answer(total * c * np.where(np.isinf(over), far, np.log1p(over)))
         .unless(
             v_to == 0,
             NotAvailable,
@@ -316,8 +318,9 @@ def _at_power(c: Array, v_from: Array, v_to: Array, power: Array, series: Array)
     root = np.sqrt(np.maximum(root_squared, 0.0))
     b = 2 * v_to - v_from
     d = np.where(b > 0, -2 * e / (b + root), (root - b) / 2)
-    fall = np.where(v_to > 0, d / v_to, 0.0)
-    energy = above_collapse * fall + d * d / 2 + power * series * _excess_over_log(fall)
+    fall = d / v_to
+    held = above_collapse * fall + power * series * _excess_over_log(fall)
+    energy = d * d / 2 + np.where(series == 0, v_to * d, held)
     return (
         Answer(c * energy / power)
         .unless(

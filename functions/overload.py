@@ -15,8 +15,8 @@ def trip_time(pickup: Positive, tau: Positive, prior: NonNegative, current: NonN
 
         t = tau ln((I^2 - Ip^2) / (I^2 - Ik^2))
 
-    Ik is the pick-up current, which is just never tripped at, Ip the earlier current, I the
-    current from t = 0 on. When Ip is at or above Ik it has tripped already, and t is 0.
+    Ik is the pick-up current, up to which it never trips, Ip the earlier current, I the current
+    from t = 0 on. When Ip is at or above Ik it has tripped already, and t is 0.
 
     Arguments:
         pickup: pick-up current Ik: setting times pick-up factor (A); number > 0

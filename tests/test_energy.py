@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
 from typing import Any
 
 import mpmath as mp
@@ -22,7 +23,12 @@ from tausheet.functions import (
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import DomainError, NotAvailable
 
-mp.mp.dps = 50
+
+@pytest.fixture(autouse=True, scope="module")
+def digits() -> Iterator[None]:
+    """Digits of the references, set back afterwards since mpmath keeps them globally."""
+    with mp.workdps(50):
+        yield
 
 
 def close(value: float, exact: Any, relative: float = 1e-13, scale: Any = 0) -> bool:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
 from typing import Any
 
 import mpmath as mp
@@ -29,6 +30,13 @@ ANGLES = [0.0, 30.0, 90.0, -90.0, 137.0, 180.0, 1000.0]
 FREQUENCY = 50.0
 
 
+@pytest.fixture(autouse=True, scope="module")
+def digits() -> Iterator[None]:
+    """Digits of the references, set back afterwards since mpmath keeps them globally."""
+    with mp.workdps(130):
+        yield
+
+
 def exact(t: float, r: float, x: float, angle: float) -> Any:
     """i(t) / (sqrt(2) rms), by the textbook form."""
     t, r, x, angle = map(mp.mpf, (t, r, x, angle))
@@ -40,7 +48,6 @@ def exact(t: float, r: float, x: float, angle: float) -> Any:
 @pytest.mark.parametrize(("r", "x"), CIRCUITS)
 @pytest.mark.parametrize("angle", ANGLES)
 def test_current_from_the_first_instant_to_long_after(r: float, x: float, angle: float) -> None:
-    mp.mp.dps = 80
     for power in range(-14, 5):
         for t in (10.0**power, 0.7 * 10.0**power):
             expected = exact(t, r, x, angle)
@@ -52,7 +59,6 @@ def test_current_from_the_first_instant_to_long_after(r: float, x: float, angle:
 
 
 def test_closed_at_a_zero_of_the_voltage_the_first_instants_keep_their_digits() -> None:
-    mp.mp.dps = 80
     for r, x in CIRCUITS:
         for t in (1e-15, 1e-12, 1e-9, 1e-6, 1e-4, 1e-3):
             expected = exact(t, r, x, 0.0) * mp.sqrt(2)
@@ -90,7 +96,6 @@ def test_current_is_the_settled_sine_and_the_direct_part(
 
 @pytest.mark.parametrize(("r", "x"), CIRCUITS)
 def test_direct_part(r: float, x: float) -> None:
-    mp.mp.dps = 50
     w, tiny = 2 * mp.pi * FREQUENCY, mp.mpf(10) ** -300
     for t in (0.0, 1e-6, 0.004, 0.1, 1.0):
         decay = mp.exp(-mp.mpf(t) * w * r / x) if x else mp.mpf(0)
@@ -137,7 +142,6 @@ def exact_i2t(t_to: float, r: float, x: float, angle: float) -> Any:
 @pytest.mark.parametrize(("r", "x"), CIRCUITS)
 @pytest.mark.parametrize("angle", ANGLES)
 def test_i2t(r: float, x: float, angle: float) -> None:
-    mp.mp.dps = 130
     for t_to in [10.0**p for p in range(-12, 4)] + [0.005, 0.0094, 0.0096, 0.02, 0.05]:
         expected = exact_i2t(t_to, r, x, angle) * 2 * 1000.0**2
         assert abs(fault_i2t(1000.0, r, x, FREQUENCY, angle, t_to) / expected - 1) < 1e-13
@@ -165,7 +169,6 @@ RATIOS = [0.0, 1e-300, 1e-9, 1e-4, 0.01, 0.05, 0.1, 0.3, 0.6366, 1.0, 2.0, 10.0,
 
 @pytest.mark.parametrize("ratio", RATIOS)
 def test_peak_factor_is_the_maximum(ratio: float) -> None:
-    mp.mp.dps = 60
     k = mp.mpf(ratio)
 
     def slope(u: Any) -> Any:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Iterator
 
 import mpmath as mp
 import numpy as np
@@ -14,7 +15,13 @@ from scipy.integrate import quad
 from tausheet.functions import corner_frequency, gain_db, noise_bandwidth, phase, step, tau_at
 from tausheet.functions.errors import DomainError
 
-mp.mp.dps = 50
+
+@pytest.fixture(autouse=True, scope="module")
+def digits() -> Iterator[None]:
+    """Digits of the references, set back afterwards since mpmath keeps them globally."""
+    with mp.workdps(50):
+        yield
+
 
 MAGNITUDES = st.floats(-150, 150).map(lambda e: 10.0**e)
 

@@ -1,7 +1,8 @@
-"""Trip times against mpmath at 50 digits, the response itself, and published classes."""
+"""Trip times against mpmath at 100 digits, the response itself, and published classes."""
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from typing import Any
 
 import mpmath as mp
@@ -13,7 +14,12 @@ from hypothesis import strategies as st
 from tausheet.functions import step, trip_time
 from tausheet.functions.errors import NotAvailable
 
-mp.mp.dps = 50
+
+@pytest.fixture(autouse=True, scope="module")
+def digits() -> Iterator[None]:
+    """Digits of the references, set back afterwards since mpmath keeps them globally."""
+    with mp.workdps(100):
+        yield
 
 
 def exact(pickup: float, tau: float, prior: float, current: float) -> Any:

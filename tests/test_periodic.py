@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from typing import Any
 
 import mpmath as mp
@@ -14,7 +15,13 @@ from tausheet.addin import cells
 from tausheet.functions import ripple, step
 from tausheet.functions.errors import ErrorKind
 
-mp.mp.dps = 50
+
+@pytest.fixture(autouse=True, scope="module")
+def digits() -> Iterator[None]:
+    """Digits of the references, set back afterwards since mpmath keeps them globally."""
+    with mp.workdps(50):
+        yield
+
 
 RATIOS = [10.0**e for e in range(-15, 3)] + [0.3, 3.0, 30.0, 350.0, 700.0, 1e5, 1e-300]
 DUTIES = [0.0, 1e-12, 1e-3, 0.25, 0.5, 0.75, 0.999, 1 - 1e-12, 1.0]
