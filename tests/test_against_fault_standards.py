@@ -19,7 +19,7 @@ def rows(standard: str) -> list[tuple[float, float]]:
 
 
 # IEC 60909-0: kappa = 1.02 + 0.98 exp(-3 R/X); for R/X up to 1.2 at most 0.56 % from the exact
-# worst case, and below it from about 0.4 to 1.0 (reference list of the project: sure)
+# worst case, and below it from about 0.4 to 1.0 (from memory)
 def test_the_approximation_of_iec_60909() -> None:
     ratio = np.linspace(0, 1.2, 2401)
     departure = (1.02 + 0.98 * np.exp(-3 * ratio)) / peak_factor(ratio, 1.0) - 1
@@ -48,7 +48,7 @@ def test_the_exact_factors_as_recomputed() -> None:
 def test_rated_peak_at_45_milliseconds_of_iec_62271(frequency: float, ratio: float) -> None:
     reactance = 2 * math.pi * frequency * 0.045
     ours = math.sqrt(2) * peak_factor(1.0, reactance)
-    # the rating is rounded down to a tenth at 50 Hz: 2.552 (reference list of the project)
+    # the rating is rounded down to a tenth at 50 Hz: 2.552
     assert ours == pytest.approx(ratio, abs=0.06)
     if frequency == 50:
         assert round(ours, 3) == 2.552

@@ -165,7 +165,7 @@ def test_charging_from_a_constant_voltage_heats_the_resistor_by_what_is_stored()
     assert dissipated(r, "current", r * c, 560.0 / r, 0.0) == pytest.approx(energy_c(c, 560.0))
 
 
-# 56.51 ms and 64.00 ms: closed form, recomputed (reference list of the project)
+# 56.51 ms and 64.00 ms: closed form, recomputed
 def test_published_ride_through() -> None:
     assert round(ride_through(0.01, 100.0, 60.0, 500.0, "power", 0.5), 5) == 0.05651
     assert ride_through(0.01, 100.0, 60.0, 500.0, "power") == pytest.approx(0.064, rel=1e-15)

@@ -23,7 +23,7 @@ def digits() -> Iterator[None]:
 
 
 def exact(pickup: float, tau: float, prior: float, current: float) -> Any:
-    # IEC 60255-149, hot curve (reference list of the project: formula sure, number unsure)
+    # IEC 60255-149, hot curve (from memory; its equation number not confirmed)
     k, p, i = map(mp.mpf, (pickup, prior, current))
     return tau * mp.log((i**2 - p**2) / (i**2 - k**2))
 
@@ -68,7 +68,7 @@ def test_a_column_of_currents() -> None:
 
 
 # IEC 60947-4-1: at 7.2 x the setting from cold, class 10 trips in 4 to 10 s, 20 in 6 to 20 s,
-# 30 in 9 to 30 s (reference list of the project: sure)
+# 30 in 9 to 30 s (from memory)
 @pytest.mark.parametrize(("shortest", "longest"), [(4, 10), (6, 20), (9, 30)])
 def test_the_time_constants_of_trip_classes(shortest: float, longest: float) -> None:
     unit = trip_time(1.05, 1.0, 0.0, 7.2)

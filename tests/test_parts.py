@@ -80,7 +80,7 @@ def test_beyond_the_range_of_numbers_there_is_none() -> None:
 @pytest.mark.parametrize(
     ("code", "number"),
     [
-        # IEC 60062, as in the project's reference list
+        # IEC 60062, from memory
         ("4K7", 4700.0),
         ("R47", 0.47),
         ("2M2", 2.2e6),
