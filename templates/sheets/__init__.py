@@ -1,1 +1,9 @@
-"""The calc sheets."""
+"""One module a calc sheet, and the list of them."""
+
+from __future__ import annotations
+
+from tausheet.templates.model import Sheet
+from tausheet.templates.sheets import bleed
+
+SHEETS: dict[str, Sheet] = {sheet.name: sheet for sheet in (bleed.SHEET,)}
+"""Every calc sheet by its name."""
