@@ -1,0 +1,203 @@
+"""A workbook that this engine computes: read once, recomputed as often as inputs change."""
+
+from __future__ import annotations
+
+import datetime
+import math
+from collections.abc import Iterable, Iterator
+from pathlib import Path
+from typing import Any
+
+from openpyxl import load_workbook
+from openpyxl.utils import get_column_letter, range_boundaries
+from openpyxl.utils.datetime import CALENDAR_WINDOWS_1900, to_excel
+from openpyxl.worksheet.formula import ArrayFormula
+
+from tausheet.addin.cells import CellValue
+from tausheet.addin.embedded.parser import Area, Formula, Unknown
+from tausheet.addin.embedded.refused import Refused
+from tausheet.addin.embedded.values import Value, top_left
+from tausheet.functions.errors import ErrorKind
+
+Key = tuple[str, int, int]
+"""Sheet, row, column."""
+
+Values = dict[str, dict[str, CellValue]]
+
+
+class Book:
+    """The cells, formulas and names of a workbook."""
+
+    def __init__(self, workbook: Any) -> None:
+        self._sheets: set[str] = set(workbook.sheetnames)
+        self._names = {name.casefold(): d.attr_text for name, d in workbook.defined_names.items()}
+        self._local_names = {
+            (sheet.title, name.casefold()): d.attr_text
+            for sheet in workbook.worksheets
+            for name, d in sheet.defined_names.items()
+        }
+        self._cells: dict[Key, CellValue] = {}
+        self._texts: dict[Key, tuple[str, Area | None]] = {}
+        self._filled_by: dict[Key, Key] = {}
+        for sheet in workbook.worksheets:
+            self._read(sheet, workbook.epoch)
+        self._formulas = {key: self._compiled(key) for key in self._texts}
+        self._order = list(self._in_order())
+
+    @classmethod
+    def load(cls, path: Path) -> Book:
+        """Read an .xlsx; Refused names the cells that this engine does not compute."""
+        return cls(load_workbook(path))
+
+    def set(self, sheet: str, address: str, value: CellValue) -> None:
+        """Enter a value into a cell that holds no formula; None empties it."""
+        column, row, _, _ = range_boundaries(address)
+        key = (sheet, int(row or 0), int(column or 0))
+        if sheet not in self._sheets or key in self._formulas or key in self._filled_by:
+            raise Refused(f"{sheet}!{address}", "it is not a cell for a value")
+        self._cells[key] = _constant(value, None)
+        if value is None:
+            del self._cells[key]
+
+    def values(self) -> Values:
+        """Compute everything; the value of every formula cell, by sheet and address."""
+        for key in (*self._formulas, *self._filled_by):
+            self._cells.pop(key, None)
+        for key in self._order:
+            self._compute(key)
+        computed: Values = {sheet: {} for sheet in self._sheets}
+        for sheet, row, column in (*self._formulas, *self._filled_by):
+            address = f"{get_column_letter(column)}{row}"
+            computed[sheet][address] = self._cells[sheet, row, column]
+        return computed
+
+    def value(self, sheet: str, row: int, column: int) -> CellValue:
+        """Value of a cell, computed before."""
+        return self._cells.get((sheet, row, column))
+
+    def named(self, sheet: str, name: str) -> str | None:
+        """What a defined name stands for on a sheet."""
+        folded = name.casefold()
+        return self._local_names.get((sheet, folded), self._names.get(folded))
+
+    def has_sheet(self, sheet: str) -> bool:
+        """Whether there is a worksheet of this name."""
+        return sheet in self._sheets
+
+    def _read(self, sheet: Any, epoch: datetime.datetime) -> None:
+        for line in sheet.iter_rows():
+            for cell in line:
+                if cell.value is None:
+                    continue
+                key = (sheet.title, cell.row, cell.column)
+                if isinstance(cell.value, ArrayFormula):
+                    left, top, right, bottom = range_boundaries(cell.value.ref)
+                    area = (sheet.title, left, top, right, bottom)
+                    self._texts[key] = (cell.value.text, area)  # type: ignore[assignment]
+                elif cell.data_type == "f":
+                    if not isinstance(cell.value, str):
+                        raise Refused(_address(key), "it belongs to a table of variants")
+                    self._texts[key] = (cell.value, None)
+                elif cell.data_type == "e":
+                    self._cells[key] = _error(cell.value)
+                else:
+                    self._cells[key] = _constant(cell.value, epoch)
+        for key, (_, block) in self._texts.items():
+            if block is not None and key[0] == sheet.title:
+                for other in _keys(block):
+                    if other != key:
+                        self._filled_by[other] = key
+                        self._cells.pop(other, None)
+
+    def _compiled(self, key: Key) -> Formula:
+        text, area = self._texts[key]
+        try:
+            return Formula(self, key[0], key[1], text, array=area is not None)
+        except Unknown as unknown:
+            raise Refused(_address(key), str(unknown)) from None
+
+    def _in_order(self) -> Iterator[Key]:
+        """The formula cells, each after those that it refers to; a cycle is refused."""
+        done: set[Key] = set()
+        for start in self._formulas:
+            if start in done:
+                continue
+            path: dict[Key, Iterator[Key]] = {start: self._needed(start)}
+            while path:
+                key, waiting = next(reversed(path.items()))
+                following = next((other for other in waiting if other not in done), None)
+                if following is None:
+                    done.add(key)
+                    del path[key]
+                    yield key
+                elif following in path:
+                    members = list(path)[list(path).index(following) :]
+                    cells = ", ".join(map(_address, members[:8]))
+                    raise Refused(cells, "these cells refer to each other in a circle")
+                else:
+                    path[following] = self._needed(following)
+
+    def _needed(self, key: Key) -> Iterator[Key]:
+        for area in self._formulas[key].areas:
+            for other in _keys(area):
+                origin = self._filled_by.get(other, other)
+                if origin in self._formulas:
+                    yield origin
+
+    def _compute(self, key: Key) -> None:
+        block = self._texts[key][1]
+        try:
+            value: Value = self._formulas[key].run()
+        except Exception as defect:
+            raise Refused(_address(key), f"it could not be computed ({defect})") from defect
+        if block is None:
+            self._cells[key] = _shown(top_left(value))
+            return
+        grid = value if type(value) is list else [[value]]
+        sheet, left, top, right, bottom = block
+        for row in range(top, bottom + 1):
+            for column in range(left, right + 1):
+                down = 0 if len(grid) == 1 else row - top
+                across = 0 if len(grid[0]) == 1 else column - left
+                inside = down < len(grid) and across < len(grid[0])
+                filled = grid[down][across] if inside else ErrorKind.NA
+                self._cells[sheet, row, column] = _shown(filled)
+
+
+def _shown(value: CellValue) -> CellValue:
+    """What a formula leaves in its cell: a reference to an empty cell is 0."""
+    return 0.0 if value is None else value
+
+
+def _keys(area: Area) -> Iterable[Key]:
+    sheet, left, top, right, bottom = area
+    for row in range(top, bottom + 1):
+        for column in range(left, right + 1):
+            yield (sheet, row, column)
+
+
+def _address(key: Key) -> str:
+    sheet, row, column = key
+    return f"{sheet}!{get_column_letter(column)}{row}"
+
+
+def _error(text: str) -> ErrorKind:
+    try:
+        return ErrorKind.from_text(text)
+    except ValueError:
+        return ErrorKind.VALUE
+
+
+def _constant(value: Any, epoch: datetime.datetime | None) -> CellValue:
+    if isinstance(value, (bool, ErrorKind)) or value is None:
+        return value
+    if isinstance(value, (int, float)):
+        try:
+            number = float(value)
+        except OverflowError:
+            return ErrorKind.NUM
+        return number if math.isfinite(number) else ErrorKind.NUM
+    if isinstance(value, (datetime.date, datetime.time, datetime.timedelta)):
+        serial: float = to_excel(value, epoch or CALENDAR_WINDOWS_1900)  # type: ignore[no-untyped-call]
+        return float(serial)
+    return str(value)

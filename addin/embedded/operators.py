@@ -1,0 +1,112 @@
+"""The operators of formulas, on single values."""
+
+from __future__ import annotations
+
+import math
+import operator
+from collections.abc import Callable
+
+from tausheet.addin.embedded.values import (
+    Scalar,
+    compared,
+    finite,
+    nearly_equal,
+    number,
+    text,
+)
+from tausheet.functions.errors import ErrorKind
+
+
+def _added(a: float, b: float) -> float:
+    # a sum that all but cancels is 0: spreadsheets hide the last bits so
+    return 0.0 if a * b < 0 and nearly_equal(a, -b) else a + b
+
+
+def _subtracted(a: float, b: float) -> float:
+    return 0.0 if a * b > 0 and nearly_equal(a, b) else a - b
+
+
+def _divided(a: float, b: float) -> float | ErrorKind:
+    return ErrorKind.DIV0 if b == 0 else a / b
+
+
+def _raised(a: float, b: float) -> float | ErrorKind:
+    try:
+        return math.pow(a, b)
+    except OverflowError:
+        return ErrorKind.NUM
+    except ValueError:
+        return ErrorKind.DIV0 if a == 0 else ErrorKind.NUM
+
+
+def _arithmetic(function: Callable[[float, float], float | ErrorKind]) -> Callable[..., Scalar]:
+    def on_values(a: Scalar, b: Scalar) -> Scalar:
+        x, y = number(a), number(b)
+        if isinstance(x, ErrorKind):
+            return x
+        if isinstance(y, ErrorKind):
+            return y
+        result = function(x, y)
+        return result if isinstance(result, ErrorKind) else finite(result)
+
+    return on_values
+
+
+def _comparison(decide: Callable[[int, int], bool]) -> Callable[..., Scalar]:
+    def on_values(a: Scalar, b: Scalar) -> Scalar:
+        side = compared(a, b)
+        return side if isinstance(side, ErrorKind) else decide(side, 0)
+
+    return on_values
+
+
+def _joined(a: Scalar, b: Scalar) -> Scalar:
+    left, right = text(a), text(b)
+    if isinstance(left, ErrorKind):
+        return left
+    return right if isinstance(right, ErrorKind) else left + right
+
+
+def negated(value: Scalar) -> Scalar:
+    """Minus in front of a value."""
+    result = number(value)
+    return result if isinstance(result, ErrorKind) else -result
+
+
+def plus(value: Scalar) -> Scalar:
+    """Plus in front of a value, which changes nothing."""
+    return value
+
+
+def percent(value: Scalar) -> Scalar:
+    """A hundredth."""
+    result = number(value)
+    return result if isinstance(result, ErrorKind) else result / 100
+
+
+BINARY: dict[str, Callable[..., Scalar]] = {
+    "+": _arithmetic(_added),
+    "-": _arithmetic(_subtracted),
+    "*": _arithmetic(operator.mul),
+    "/": _arithmetic(_divided),
+    "^": _arithmetic(_raised),
+    "&": _joined,
+    "=": _comparison(operator.eq),
+    "<>": _comparison(operator.ne),
+    "<": _comparison(operator.lt),
+    ">": _comparison(operator.gt),
+    "<=": _comparison(operator.le),
+    ">=": _comparison(operator.ge),
+}
+
+BINDING = {
+    "prefix": 7,
+    "^": 6,
+    "*": 5,
+    "/": 5,
+    "+": 4,
+    "-": 4,
+    "&": 3,
+    **dict.fromkeys(("=", "<>", "<", ">", "<=", ">="), 2),
+}
+"""How tightly each binds: -2^2 is 4."""

@@ -1,0 +1,142 @@
+"""Cell values inside the evaluator: turned into numbers and texts, and compared.
+
+What a spreadsheet does with a blank, a text or TRUE where another kind belongs follows
+LibreOffice, cell by cell (tests/test_evaluator_against_libreoffice.py).
+"""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Callable, Iterator
+from decimal import Decimal
+from typing import Any, TypeAlias
+
+from tausheet.functions.errors import ErrorKind
+
+Scalar: TypeAlias = float | str | bool | ErrorKind | None
+Grid: TypeAlias = list[list[Scalar]]
+Value: TypeAlias = Any
+"""A scalar, or a grid: the rows of a range."""
+
+_NUMBER = re.compile(r"\s*[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?\s*")
+_CLOSE, _FAR = 2.0**-48, 2.0**-44
+
+
+def number(value: Scalar) -> float | ErrorKind:
+    """A value where a number belongs; a text that is a number in plain digits counts as it."""
+    if type(value) is float:
+        return value
+    if value is None:
+        return 0.0
+    if isinstance(value, ErrorKind):
+        return value
+    if isinstance(value, str):
+        return finite(float(value)) if _NUMBER.fullmatch(value) else ErrorKind.VALUE
+    return float(value)
+
+
+def text(value: Scalar) -> str | ErrorKind:
+    """A value where a text belongs: a number with 15 digits at most."""
+    if isinstance(value, (str, ErrorKind)):
+        return value
+    if value is None:
+        return ""
+    if isinstance(value, bool):
+        return str(value).upper()
+    return digits(value)
+
+
+def digits(value: float) -> str:
+    """A number as the text that & makes of it."""
+    if value == 0:
+        return "0"
+    rounded = Decimal(f"{value:.14e}").normalize()
+    exponent = rounded.adjusted()
+    if -20 < exponent < 15 and len(f"{rounded:f}".lstrip("-")) <= 22:
+        return f"{rounded:f}"
+    sign, figures, _ = rounded.as_tuple()
+    whole, rest = str(figures[0]), "".join(map(str, figures[1:]))
+    mantissa = f"{whole}.{rest}" if rest else whole
+    return f"{'-' if sign else ''}{mantissa}E{'+' if exponent >= 0 else '-'}{abs(exponent):02d}"
+
+
+def finite(value: float) -> float | ErrorKind:
+    """A result, or #NUM! where it lies beyond the numbers."""
+    return value if math.isfinite(value) else ErrorKind.NUM
+
+
+def nearly_equal(a: float, b: float) -> bool:
+    """Whether a spreadsheet takes two numbers for one: to 48 bits, whole numbers exactly."""
+    if a == b:
+        return True
+    if a == 0 or b == 0:
+        return False
+    distance = abs(a - b)
+    a, b = abs(a), abs(b)
+    if not math.isfinite(distance) or distance > a * _FAR or distance > b * _FAR:
+        return False
+    if all(x < 2.0**53 and x == math.floor(x) for x in (distance, a, b)):
+        return False
+    return distance < a * _CLOSE and distance < b * _CLOSE
+
+
+def compared(a: Scalar, b: Scalar) -> int | ErrorKind:
+    """-1, 0 or 1: numbers before texts, texts without regard to case; TRUE and FALSE are 1, 0."""
+    for value in (a, b):
+        if isinstance(value, ErrorKind):
+            return value
+    if isinstance(a, str) or isinstance(b, str):
+        if not isinstance(a, str) and a is not None:
+            return -1
+        if not isinstance(b, str) and b is not None:
+            return 1
+        left, right = (a or "").casefold(), (b or "").casefold()
+        return (left > right) - (left < right)
+    x, y = float(a or 0.0), float(b or 0.0)  # type: ignore[arg-type]
+    return 0 if nearly_equal(x, y) else (x > y) - (x < y)
+
+
+def truth(value: Scalar) -> bool | ErrorKind:
+    """A value where a condition belongs."""
+    as_number = number(value)
+    return as_number if isinstance(as_number, ErrorKind) else as_number != 0
+
+
+def each(function: Callable[..., Scalar], *values: Value) -> Value:
+    """A function of scalars, element by element where a value is a grid.
+
+    A single row or column stretches; where shapes leave an element without a partner it is #N/A.
+    """
+    if not any(type(value) is list for value in values):
+        return function(*values)
+    grids = [value if type(value) is list else [[value]] for value in values]
+    height = max(len(grid) for grid in grids)
+    width = max(len(grid[0]) for grid in grids)
+
+    def element(grid: Grid, row: int, column: int) -> Scalar:
+        row = 0 if len(grid) == 1 else row
+        column = 0 if len(grid[0]) == 1 else column
+        if row < len(grid) and column < len(grid[0]):
+            return grid[row][column]
+        return ErrorKind.NA
+
+    return [
+        [function(*(element(grid, row, column) for grid in grids)) for column in range(width)]
+        for row in range(height)
+    ]
+
+
+def cells(value: Value) -> Iterator[Scalar]:
+    """The scalars of a value in reading order."""
+    if type(value) is list:
+        for row in value:
+            yield from row
+    else:
+        yield value
+
+
+def top_left(value: Value) -> Scalar:
+    """What a single cell shows of a result."""
+    first: Scalar = value[0][0] if type(value) is list else value
+    return first

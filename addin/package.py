@@ -1,0 +1,278 @@
+"""A workbook file as a package of parts: read with suspicion, changed only where values go.
+
+A computed value is put beside its formula inside the sheet's XML, byte by byte; every other part
+is copied as it is, compressed bytes included.
+"""
+
+from __future__ import annotations
+
+import io
+import posixpath
+import re
+import zipfile
+from collections.abc import Iterable, Mapping
+from pathlib import Path
+from typing import Any
+from xml.parsers import expat
+from xml.sax.saxutils import escape
+
+from defusedxml import ElementTree
+
+from tausheet.addin.cells import CellValue
+from tausheet.functions.errors import ErrorKind, TausheetError
+
+Values = Mapping[str, Mapping[str, CellValue]]
+
+MOST_BYTES = 100_000_000
+"""Unpacked size beyond which a workbook is not read: a calc sheet has about 1 MB."""
+_MOST_PARTS = 5_000
+_TARGET = "{http://schemas.openxmlformats.org/officeDocument/2006/relationships}id"
+_OLD_FORMAT = b"\xd0\xcf\x11\xe0"
+
+
+class Unreadable(TausheetError):
+    """A file that is no workbook, or one that is not safe to read."""
+
+
+def read(path: Path) -> bytes:
+    """The bytes of a workbook file, after a look at what they would unpack to."""
+    try:
+        size = path.stat().st_size
+        if size > MOST_BYTES:
+            raise Unreadable(f"{path} has {size} bytes, more than a workbook should")
+        data = path.read_bytes()
+    except OSError as error:
+        raise Unreadable(f"{path} cannot be read: {error.strerror}") from None
+    if data.startswith(_OLD_FORMAT):
+        raise Unreadable(f"{path} is encrypted, or of the old .xls kind; save it as plain .xlsx")
+    try:
+        with zipfile.ZipFile(io.BytesIO(data)) as package:
+            _inspect(path, package)
+    except (zipfile.BadZipFile, EOFError, NotImplementedError, RuntimeError, ValueError) as error:
+        raise Unreadable(f"{path} is not a whole .xlsx workbook ({error})") from None
+    return data
+
+
+def _inspect(path: Path, package: zipfile.ZipFile) -> None:
+    parts = package.infolist()
+    names = [part.filename for part in parts]
+    if len(parts) > _MOST_PARTS or sum(part.file_size for part in parts) > MOST_BYTES:
+        raise Unreadable(f"{path} would unpack to more than a workbook should")
+    if len(set(names)) != len(names) or any(".." in n.split("/") or n[:1] == "/" for n in names):
+        raise Unreadable(f"{path} has parts with doubtful names")
+    if any(part.flag_bits & 1 for part in parts):
+        raise Unreadable(f"{path} is encrypted")
+    if not {"[Content_Types].xml", "xl/workbook.xml"} <= set(names):
+        raise Unreadable(f"{path} is not an .xlsx workbook")
+    left = MOST_BYTES
+    for part in parts:
+        with package.open(part) as stream:
+            content = stream.read(left + 1)
+        left -= len(content)
+        if left < 0:
+            raise Unreadable(f"{path} would unpack to more than a workbook should")
+        if part.filename.endswith((".xml", ".rels", ".vml")) and (
+            content[:2] in (b"\xff\xfe", b"\xfe\xff") or re.search(rb"<!(DOCTYPE|ENTITY)", content)
+        ):
+            raise Unreadable(f"{path}: {part.filename} holds declarations that no workbook needs")
+
+
+def sheet_parts(package: zipfile.ZipFile) -> dict[str, str]:
+    """The part in which each worksheet lies, by its title."""
+    relations = ElementTree.fromstring(package.read("xl/_rels/workbook.xml.rels"))
+    targets = {relation.get("Id"): relation.get("Target", "") for relation in relations}
+    parts = {}
+    for element in ElementTree.fromstring(package.read("xl/workbook.xml")).iter():
+        if element.tag.endswith("}sheet"):
+            target = targets[element.get(_TARGET)]
+            inside = target[1:] if target.startswith("/") else posixpath.join("xl", target)
+            parts[element.get("name", "")] = posixpath.normpath(inside)
+    return parts
+
+
+def with_values(data: bytes, values: Values) -> bytes:
+    """The workbook with a value stored in every formula cell that `values` names."""
+    with zipfile.ZipFile(io.BytesIO(data)) as package:
+        parts = sheet_parts(package)
+        changed = {
+            parts[title]: _spliced(package.read(parts[title]), cells)
+            for title, cells in values.items()
+            if cells
+        }
+    return replaced(data, changed)
+
+
+def replaced(data: bytes, changed: Mapping[str, bytes]) -> bytes:
+    """The package with some parts replaced, all others byte for byte as they were."""
+    out = io.BytesIO()
+    with zipfile.ZipFile(io.BytesIO(data)) as given, zipfile.ZipFile(out, "w") as made:
+        made.comment = given.comment
+        entries = sorted(given.infolist(), key=lambda entry: entry.header_offset)
+        ends = [entry.header_offset for entry in entries[1:]] + [given.start_dir]
+        for entry, end in zip(entries, ends, strict=True):
+            if entry.filename in changed:
+                fresh = zipfile.ZipInfo(entry.filename, entry.date_time)
+                fresh.compress_type = zipfile.ZIP_DEFLATED
+                fresh.external_attr, fresh.create_system = entry.external_attr, entry.create_system
+                made.writestr(fresh, changed[entry.filename])
+            else:
+                _copy(made, entry, data[entry.header_offset : end])
+    return out.getvalue()
+
+
+def _copy(made: Any, entry: zipfile.ZipInfo, raw: bytes) -> None:
+    """Append a local record as it is, and list it; zipfile has no call for this."""
+    entry.header_offset = made.fp.tell()
+    made.fp.write(raw)
+    made.start_dir = made.fp.tell()
+    made.filelist.append(entry)
+    made.NameToInfo[entry.filename] = entry
+    made._didModify = True
+
+
+def _spliced(xml: bytes, values: Mapping[str, CellValue]) -> bytes:
+    """A sheet's XML with the values put in; cells that `values` does not name stay."""
+    found = _Cells(xml)
+    out, at = [], 0
+    for cell in found.cells:
+        if cell.address not in values or not (cell.has_formula or cell.in_block):
+            continue
+        out.append(xml[at : cell.start])
+        out.append(_rewritten(xml, cell, values[cell.address]))
+        at = cell.end
+    return b"".join(out) + xml[at:]
+
+
+class _Cell:
+    """Where a cell element lies in the XML."""
+
+    def __init__(self, address: str, start: int) -> None:
+        self.address, self.start, self.end = address, start, start
+        self.has_formula = self.in_block = False
+        self.value: tuple[int, int] | None = None
+
+
+class _Cells:
+    """The cells of a sheet, found by one pass that builds no tree."""
+
+    def __init__(self, xml: bytes) -> None:
+        self.cells: list[_Cell] = []
+        self._xml = xml
+        self._cell: _Cell | None = None
+        self._value_start = 0
+        self._blocks: list[tuple[int, int, int, int]] = []
+        parser = expat.ParserCreate()
+        parser.StartElementHandler = self._begin
+        parser.EndElementHandler = self._finish
+        self._parser = parser
+        parser.Parse(xml, True)
+
+    def _begin(self, name: str, attributes: dict[str, str]) -> None:
+        kind = name.rpartition(":")[2]
+        if kind == "c":
+            self._cell = _Cell(attributes.get("r", ""), self._parser.CurrentByteIndex)
+            column, row = _place(self._cell.address)
+            self._cell.in_block = any(
+                left <= column <= right and top <= row <= bottom
+                for left, top, right, bottom in self._blocks
+            )
+        elif kind == "f" and self._cell is not None:
+            self._cell.has_formula = True
+            if attributes.get("t") == "array" and ":" in attributes.get("ref", ""):
+                first, _, last = attributes["ref"].partition(":")
+                self._blocks.append((*_place(first), *_place(last)))
+        elif kind == "v" and self._cell is not None:
+            self._value_start = self._parser.CurrentByteIndex
+
+    def _finish(self, name: str) -> None:
+        kind, at, cell = name.rpartition(":")[2], self._parser.CurrentByteIndex, self._cell
+        if cell is None:
+            return
+        if kind == "v":
+            cell.value = (self._value_start, self._element_end(self._value_start, at))
+        elif kind == "c":
+            cell.end = self._element_end(cell.start, at)
+            self.cells.append(cell)
+            self._cell = None
+
+    def _element_end(self, start: int, end_tag: int) -> int:
+        """End of an element; for an empty one expat gives no place that can be relied on."""
+        head_end = self._xml.index(b">", start) + 1
+        empty = self._xml[head_end - 2 : head_end] == b"/>"
+        return head_end if empty else self._xml.index(b">", end_tag) + 1
+
+
+def _place(address: str) -> tuple[int, int]:
+    column = 0
+    letters = address.rstrip("0123456789")
+    for letter in letters:
+        column = 26 * column + ord(letter) - 64
+    return column, int(address[len(letters) :] or 0)
+
+
+def _rewritten(xml: bytes, cell: _Cell, value: CellValue) -> bytes:
+    kind, text = _stored(value)
+    head_end = xml.index(b">", cell.start) + 1
+    head = re.sub(rb'\s+t="[^"]*"', b"", xml[cell.start : head_end])
+    closing = b""
+    inside_end = cell.end
+    if head.endswith(b"/>"):  # a cell of an array block with nothing in it yet
+        head, closing, inside_end = head[:-2].rstrip() + b">", b"</c>", head_end
+    if kind:
+        head = head[:-1] + f' t="{kind}">'.encode()
+    new = f"<v>{text}</v>".encode()
+    inside = xml[head_end:inside_end]
+    if cell.value is not None:
+        start, end = (place - head_end for place in cell.value)
+        return head + inside[:start] + new + inside[end:]
+    if closing:
+        return head + new + closing
+    at = inside.rindex(b"</")
+    return head + inside[:at] + new + inside[at:]
+
+
+def _stored(value: CellValue) -> tuple[str, str]:
+    """The cell type and the text of a value in a file."""
+    if isinstance(value, ErrorKind):
+        return "e", value.text
+    if isinstance(value, bool):
+        return "b", str(int(value))
+    if isinstance(value, str):
+        return "str", _escaped(value)
+    return "", repr(0.0 if value is None else float(value)).removesuffix(".0")
+
+
+_CONTROL = re.compile("[\x00-\x08\x0b\x0c\x0e-\x1f\ufffe\uffff]")
+
+
+def _escaped(text: str) -> str:
+    """A text as XML holds it; characters that XML cannot hold in the workbook's own spelling."""
+    text = re.sub(r"_(?=x[0-9A-Fa-f]{4}_)", "_x005F_", text)
+    return escape(_CONTROL.sub(lambda found: f"_x{ord(found[0]):04X}_", text))
+
+
+def formulas_spelled_plainly(data: bytes) -> tuple[bytes, Iterable[str]]:
+    """Our functions by their plain names where LibreOffice has stored them by its long ones."""
+    prefix = b"ORG.TAUSHEET.FUNCTIONS."
+    changed, cells = {}, []
+    with zipfile.ZipFile(io.BytesIO(data)) as package:
+        for title, part in sheet_parts(package).items():
+            xml = package.read(part)
+            if prefix not in xml.upper():
+                continue
+            found = re.compile(
+                rb'(<c\b[^>]*\br="([A-Z]+[0-9]+)"[^>]*>\s*<f\b[^>]*>)([^<]*)(</f>)', re.IGNORECASE
+            )
+
+            def plain(match: re.Match[bytes], title: str = title) -> bytes:
+                formula = re.sub(re.escape(prefix), b"", match[3], flags=re.IGNORECASE)
+                if formula != match[3]:
+                    cells.append(f"{title}!{match[2].decode()}")
+                return match[1] + formula + match[4]
+
+            changed[part] = found.sub(plain, xml)
+        names = package.read("xl/workbook.xml")
+        if prefix in names.upper():
+            changed["xl/workbook.xml"] = re.sub(re.escape(prefix), b"", names, flags=re.IGNORECASE)
+            cells.append("defined names")
+    return (replaced(data, changed) if changed else data), cells
