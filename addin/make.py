@@ -1,0 +1,119 @@
+"""Makes calc sheets: built, computed, values stored, put into place whole."""
+
+from __future__ import annotations
+
+import tempfile
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from openpyxl.utils import range_boundaries
+
+from tausheet import templates
+from tausheet.addin import files, package
+from tausheet.addin.cells import CellValue
+from tausheet.addin.recalc import Values, engine_named
+from tausheet.functions.errors import ErrorKind, TausheetError
+
+
+@dataclass(frozen=True)
+class Made:
+    """A calc sheet that was made, and what it says."""
+
+    path: Path
+    title: str
+    verdict: str
+    decided_by: str
+    checks: list[tuple[str, str, str, str]]
+    """Criterion, value used, limit, PASS or FAIL."""
+
+
+class NotMade(TausheetError):
+    """A calc sheet that was not made."""
+
+
+def make_sheet(
+    name: str,
+    out: Path,
+    given: Mapping[str, str | float | None],
+    *,
+    demo: bool = False,
+    force: bool = False,
+    engine: str = "embedded",
+) -> Made:
+    """Build a calc sheet, compute it, store the values and put the file into place."""
+    if out.suffix.lower() != ".xlsx":
+        raise NotMade(f"{out} does not end in .xlsx; a calc sheet is a plain workbook")
+    files.refuse_existing(out, force=force)
+    workbook = templates.build(name, given, demo=demo)
+    with files.replacing(out, force=force) as temporary:
+        workbook.save(temporary)
+        if engine == "embedded":
+            from tausheet.addin.embedded import Book
+
+            values = Book(workbook).values()
+        else:
+            values = engine_named(engine)(temporary)
+        temporary.write_bytes(package.with_values(temporary.read_bytes(), values))
+    return _summary(out, templates.SHEETS[name].title, workbook, values)
+
+
+def _summary(path: Path, title: str, workbook: Any, values: Values) -> Made:
+    def column(name: str) -> list[str]:
+        return [_shown(value) for value in _named(workbook, values, name)]
+
+    checks = [
+        (criterion, value, limit, result)
+        for criterion, value, limit, result in zip(
+            *map(column, ("check_names", "check_values", "check_limits", "check_results")),
+            strict=True,
+        )
+        if criterion
+    ]
+    return Made(path, title, column("verdict")[0], column("decided_by")[0], checks)
+
+
+def _named(workbook: Any, values: Values, name: str) -> list[CellValue]:
+    """The cell values that a defined name stands for."""
+    ((sheet, reference),) = workbook.defined_names[name].destinations
+    left, top, right, bottom = range_boundaries(reference)
+    found = []
+    for row in workbook[sheet].iter_rows(top, bottom, left, right):
+        for cell in row:
+            found.append(values[sheet].get(cell.coordinate, cell.value))
+    return found
+
+
+def _shown(value: CellValue) -> str:
+    if isinstance(value, ErrorKind):
+        return value.text
+    return "" if value is None else str(value)
+
+
+def make_demo(folder: Path, *, force: bool = False) -> list[Made]:
+    """The calc sheets of the demo job, one a file."""
+    outs = {name: folder / f"quay-4-{name}.xlsx" for name in templates.SHEETS}
+    for out in outs.values():
+        files.refuse_existing(out, force=force)
+    try:
+        folder.mkdir(parents=True, exist_ok=True)
+    except OSError as error:
+        raise NotMade(f"the folder {folder} cannot be made: {error.strerror}") from None
+    return [make_sheet(name, out, {}, demo=True, force=force) for name, out in outs.items()]
+
+
+def print_sheets(paths: Sequence[Path], *, force: bool = False) -> list[Path]:
+    """A .pdf beside each workbook, printed by LibreOffice."""
+    from tausheet.addin.calc import pdf
+
+    outs = [path.with_suffix(".pdf") for path in paths]
+    for path, out in zip(paths, outs, strict=True):
+        package.read(path)
+        files.refuse_existing(out, force=force)
+    with tempfile.TemporaryDirectory() as folder:
+        for path, out in zip(paths, outs, strict=True):
+            (printed,) = pdf([path], Path(folder))
+            with files.replacing(out, force=force) as temporary:
+                temporary.write_bytes(printed.read_bytes())
+    return outs
