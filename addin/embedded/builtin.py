@@ -346,6 +346,7 @@ BUILTINS: dict[str, Builtin] = {
     "NOT": _each(_not, 1),
     "ISBLANK": _seen(lambda v: v is None),
     "ISERROR": _seen(lambda v: isinstance(v, ErrorKind)),
+    "ISLOGICAL": _seen(lambda v: isinstance(v, bool)),
     "ISNUMBER": _seen(lambda v: isinstance(v, (float, bool))),
     "ISTEXT": _seen(lambda v: isinstance(v, str)),
     "AND": _whole(_all_or_any(all), 1, _ANY),
