@@ -7,6 +7,7 @@ black-and-white print loses nothing; colour only repeats it.
 from __future__ import annotations
 
 import math
+from functools import cache
 
 from openpyxl.formatting.rule import Rule
 from openpyxl.styles import Alignment, Border, Font, PatternFill, Side
@@ -54,11 +55,13 @@ RELATIVE = "0.0%"
 TINY = "0.0E+00;-0.0E+00;0"
 
 
+@cache
 def font(size: float = 9, bold: bool = False, italic: bool = False, colour: str = INK) -> Font:
     """A font of the page."""
     return Font(name=FONT, size=size, bold=bold, italic=italic, color=colour)
 
 
+@cache
 def fill(colour: str) -> PatternFill:
     """A plain ground."""
     return PatternFill("solid", fgColor=colour, bgColor=colour)
@@ -75,6 +78,7 @@ def when(formula: str, ground: str = "", letters: str = INK, bold: bool = True) 
     )
 
 
+@cache
 def align(
     horizontal: str = "left", vertical: str = "center", wrap: bool = False, indent: int = 0
 ) -> Alignment:

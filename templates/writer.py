@@ -6,6 +6,7 @@ from collections.abc import Mapping
 from datetime import date
 
 from openpyxl import Workbook
+from openpyxl.utils.indexed_list import IndexedList
 from openpyxl.workbook.properties import CalcProperties
 from openpyxl.worksheet.header_footer import _HeaderFooterPart
 from openpyxl.worksheet.page import PageMargins
@@ -63,8 +64,10 @@ def build(
 
 def _set_up(book: Book) -> None:
     """The page: grid, margins, heading strip on every page, page n of m at top and bottom."""
-    normal = book.workbook._named_styles["Normal"]  # type: ignore[attr-defined]
-    normal.font = style.font(10)  # the unit of column widths: 7 pixels a digit
+    # the font of every cell that sets none, and the unit of column widths: 7 pixels a digit
+    plain = style.font(10)
+    book.workbook._fonts = IndexedList([plain])  # type: ignore[attr-defined]
+    book.workbook._named_styles["Normal"].font = plain  # type: ignore[attr-defined]
     sheet = book.main
     for letter, pixels in style.COLUMNS.items():
         sheet.column_dimensions[letter].width = (pixels - 5) / 7

@@ -85,6 +85,7 @@ class _Points:
         self.last = TOP + self.curve.points
         self.place = 3
         self.time_scale = _scale("time", self.curve.time_unit)
+        self.times = "B" if self.time_scale else "A"
         self.value_scale = _scale(self.curve.quantity, self.curve.unit)
 
     def write(self) -> list[_Line]:
@@ -98,7 +99,7 @@ class _Points:
         self._times()
         lines = [self._trace(trace.label, trace.formula) for trace in curve.traces]
         highest = f"=MAX(C{TOP}:{get_column_letter(self.place - 1)}{self.last})"
-        ends = (f"=B{TOP}", f"=B{self.last}")
+        ends = (f"={self.times}{TOP}", f"={self.times}{self.last}")
         for level in curve.levels:
             height = f"=({level.value}){self.value_scale}"
             lines.append(self._few(level.label, "level", zip(ends, (height, height), strict=True)))
@@ -113,7 +114,7 @@ class _Points:
     def _head(self, letter: str, label: str) -> None:
         cell = self.sheet[f"{letter}{TOP - 1}"]
         cell.value = label
-        cell.font = style.font(8, bold=True)
+        cell.font = style.font(10, bold=True)
         cell.border = style.RULE
         self.sheet.column_dimensions[letter].width = max(12, len(label) + 2)
 
@@ -122,7 +123,8 @@ class _Points:
         self.sheet["D1"] = f"=IFERROR({self.curve.end},NA())"
         self.book.define("curve_span", self.sheet, "D1")
         self._head("A", "time in s")
-        self._head("B", f"time in {shown_unit(self.curve.time_unit)}")
+        if self.time_scale:
+            self._head("B", f"time in {shown_unit(self.curve.time_unit)}")
         at_zero = round(points * BEFORE / (PAST + BEFORE))
         for i in range(points + 1):
             before = i < at_zero
@@ -130,7 +132,8 @@ class _Points:
                 -BEFORE * (1 - i / at_zero) if before else PAST * (i - at_zero) / (points - at_zero)
             )
             self.sheet[f"A{TOP + i}"] = f"=curve_span*{share!r}"
-            self.sheet[f"B{TOP + i}"] = f"=A{TOP + i}{self.time_scale}"
+            if self.time_scale:
+                self.sheet[f"B{TOP + i}"] = f"=A{TOP + i}{self.time_scale}"
 
     def _trace(self, label: str, formula: str) -> _Line:
         letter = get_column_letter(self.place)
@@ -139,7 +142,7 @@ class _Points:
         for row in range(TOP, self.last + 1):
             at = renamed(formula, {"t": f"$A{row}"})
             self.sheet[f"{letter}{row}"] = f"=({at}){self.value_scale}"
-        return _Line(label, "trace", "B", letter, self.last)
+        return _Line(label, "trace", self.times, letter, self.last)
 
     def _few(self, label: str, kind: str, points: Iterable[tuple[str, str | int]]) -> _Line:
         times, values = get_column_letter(self.place), get_column_letter(self.place + 1)

@@ -105,11 +105,10 @@ def _columns(
         )
         cell = sheet[f"{letter}{TOP - 1}"]
         cell.value = heading
-        cell.font = style.font(8, bold=True)
+        cell.font = style.font(10, bold=True)
         cell.border = style.RULE
         for row, value in enumerate(values, start=TOP):
             sheet[f"{letter}{row}"] = value
-            sheet[f"{letter}{row}"].font = style.font(8)
         book.define(name, sheet, f"{letter}{TOP}", f"{letter}{TOP + len(values) - 1}")
         place += 1
     return place + 1

@@ -74,13 +74,12 @@ class _Corners:
         self.value_columns = [get_column_letter(2 + k + j) for j in range(k)]
         self.result_column = get_column_letter(2 + 2 * k)
         self.draw_columns = [get_column_letter(4 + 2 * k + j) for j in range(k)]
-        self.drawn_columns = [get_column_letter(4 + 3 * k + j) for j in range(k)]
-        self.drawn_result = get_column_letter(4 + 4 * k)
+        self.drawn_result = get_column_letter(4 + 3 * k)
 
     def write(self) -> None:
         """Write parts, sums, corners and draws."""
         self._title("A1", f"Worst case of {self.worst.of}, in base SI units")
-        for letter in [get_column_letter(i) for i in range(1, 6 + 4 * len(self.parts))]:
+        for letter in [get_column_letter(i) for i in range(1, 5 + 3 * len(self.parts))]:
             self.sheet.column_dimensions[letter].width = 15
         self._alone()
         self._corner_rows()
@@ -89,7 +88,8 @@ class _Corners:
 
     def _put(self, cell: str, value: object, bold: bool = False) -> None:
         self.sheet[cell] = value  # type: ignore[assignment]
-        self.sheet[cell].font = style.font(8, bold=bold)
+        if bold:
+            self.sheet[cell].font = style.font(10, bold=True)
 
     def _title(self, cell: str, value: str) -> None:
         self.sheet[cell] = value
@@ -155,7 +155,6 @@ class _Corners:
         heads = {self.drawn_result: "result"}
         for j, part in enumerate(self.parts):
             heads[self.draw_columns[j]] = f"{part.symbol}, 0 to 1"
-            heads[self.drawn_columns[j]] = part.symbol
         self._heads(self.first - 1, heads)
         self._put(
             f"{self.draw_columns[0]}{self.first - 2}",
@@ -165,11 +164,10 @@ class _Corners:
         for i in range(self.worst.draws):
             row, cells = self.first + i, {}
             for j, part in enumerate(self.parts):
-                unit, value = f"{self.draw_columns[j]}{row}", f"{self.drawn_columns[j]}{row}"
+                unit = f"{self.draw_columns[j]}{row}"
                 self._put(unit, float(units[i, j]))
                 low, high = f"{part.symbol}_lo", f"{part.symbol}_hi"
-                self._put(value, f"={low}+({high}-{low})*{unit}")
-                cells[part.symbol] = value
+                cells[part.symbol] = f"({low}+({high}-{low})*{unit})"
             self._put(f"{self.drawn_result}{row}", f"={renamed(self.worst.formula, cells)}")
 
     def _sums(self) -> None:
