@@ -72,6 +72,7 @@ class CellFunction:
     parameters: tuple[Parameter, ...]
     variadic: bool
     matrix: bool
+    texts: bool
     function: Callable[..., Any]
     kernel: Callable[..., Any]
     scalar: Callable[..., float | None] | None
@@ -94,12 +95,14 @@ def cell_function(
     *,
     scalar: Callable[..., float | None] | None = None,
     matrix: bool = False,
+    texts: bool = False,
 ) -> Callable[[Callable[P, R]], Callable[P, R]]:
     """Make a function a cell function and list it.
 
     name: what is typed into the cell. group: where the index and the wizard list it.
     scalar: a quick way for plain floats; it returns None for anything it will not decide.
     matrix: the result is a matrix of its own shape, not one value an element.
+    texts: the result is a text, or texts.
     """
 
     def decorate(kernel: Callable[P, R]) -> Callable[P, R]:
@@ -116,7 +119,7 @@ def cell_function(
                 return kernel(*args, **kwargs)
             return _evaluate(entry, _positional(entry, args, kwargs)).value()  # type: ignore[no-any-return]
 
-        entry = _describe(name, group, kernel, function, scalar, matrix)
+        entry = _describe(name, group, kernel, function, scalar, matrix, texts)
         function.cell = entry  # type: ignore[attr-defined]
         CATALOGUE[name] = entry
         return function
@@ -131,6 +134,7 @@ def _describe(
     function: Callable[..., Any],
     scalar: Callable[..., float | None] | None,
     matrix: bool,
+    texts: bool,
 ) -> CellFunction:
     hints = get_type_hints(kernel, include_extras=True)
     text = inspect.getdoc(kernel) or ""
@@ -153,6 +157,7 @@ def _describe(
         tuple(parameters),
         variadic,
         matrix,
+        texts,
         function,
         kernel,
         scalar,

@@ -135,7 +135,7 @@ def rkm(code: Code) -> Numbers:
 _MARKS = {"ohm": ("RKMGT", 0, 1e-6, 1e15), "F": ("pnµmF", -4, 1e-15, 1e3)}
 
 
-@cell_function("FO_RKM_TEXT", "Parts and units")
+@cell_function("FO_RKM_TEXT", "Parts and units", texts=True)
 def rkm_text(value: Positive, unit: Code) -> Any:
     """Letter-and-digit code for a number: the letter is the decimal point.
 

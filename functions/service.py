@@ -10,7 +10,7 @@ from tausheet.functions.catalogue import CATALOGUE, cell_function
 from tausheet.functions.errors import InputError
 
 
-@cell_function("FO_VERSION", "Service")
+@cell_function("FO_VERSION", "Service", texts=True)
 def version() -> str:
     """Version of tausheet, as a text.
 
@@ -23,7 +23,7 @@ def version() -> str:
     return _distribution_version("tausheet")
 
 
-@cell_function("FO_REASON", "Service")
+@cell_function("FO_REASON", "Service", texts=True)
 def reason(cell_function: Code, *arguments: Annotated[Any, Anything()]) -> str:
     """Why a call of a cell function gives an error, in words; an empty text when it does not.
 

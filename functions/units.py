@@ -233,7 +233,7 @@ def in_unit(value: Finite, unit: Code) -> Numbers:
     return _as_numbers(_each(value, unit, lambda v, u: _converted(v, *_RATIOS[u][::-1])))
 
 
-@cell_function("FO_TEXT", "Parts and units")
+@cell_function("FO_TEXT", "Parts and units", texts=True)
 def text(value: Finite, unit: Code, digits: Digits = 3.0) -> Any:
     """Text for a report, with the prefix that reads best; for reading only, never to compare.
 

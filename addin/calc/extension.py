@@ -31,6 +31,7 @@ def python_environment() -> dict[str, Any]:
         "binary": inside.binary_form(sysconfig.get_config_var),
         "folders": [folder for folder in folders if folder in sys.path],
         "functions": [entry.name for entry in interface.functions()],
+        "texts": [entry.name for entry in interface.functions() if entry.texts],
     }
 
 

@@ -49,7 +49,8 @@ def text(entries: Iterable[CellFunction]) -> str:
         arguments = ", ".join(
             f"[in] {kind} {argument_name(index)}" for index, kind in enumerate(kinds, start=1)
         )
-        result = "sequence< sequence<any> >"
+        # a text inside an array compares as equal to every other in LibreOffice 7.4
+        result = "any" if entry.texts else "sequence< sequence<any> >"
         lines.append(f"    {result} {entry.name}({arguments});")
     return "\n".join([*lines, "};", " ".join("};" for _ in modules)]) + "\n"
 

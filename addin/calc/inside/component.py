@@ -62,6 +62,16 @@ def _answers(recorded: dict[str, Any]) -> Callable[[str], Callable[..., Any]]:
     return answer_of
 
 
+def _alone(answer: Callable[..., Any]) -> Callable[..., Any]:
+    """A text on its own, not in an array; an array of texts is an error (see interface.text)."""
+
+    def answer_alone(*arguments: Any) -> Any:
+        rows = answer(*arguments)
+        return rows[0][0] if len(rows) == len(rows[0]) == 1 else _VALUE_ERROR
+
+    return answer_alone
+
+
 _functions: Any = None
 
 
@@ -74,6 +84,8 @@ def _create_functions(context: Any, *_: Any) -> Any:
         recorded = record()
         answer_of = _answers(recorded)
         methods = {name: staticmethod(answer_of(name)) for name in recorded["functions"]}
+        for name in recorded["texts"]:
+            methods[name] = staticmethod(_alone(answer_of(name)))
         _functions = type("Functions", (_Named, XFunctions), {"name": SERVICE, **methods})
     return _functions()
 
