@@ -253,8 +253,13 @@ class Book:
         """Enter values, by sheet and address; None empties a cell."""
         self._ask("set", {title: _encoded(values) for title, values in cells.items()})
 
+    def calculate(self) -> None:
+        """Compute every formula."""
+        self._ask("calculate")
+
     def values(self) -> Values:
         """Compute everything; the value of every formula cell, by sheet and address."""
+        self.calculate()
         return {
             title: {
                 address: self._decoded(title, address, value) for address, value in cells.items()
@@ -263,7 +268,11 @@ class Book:
         }
 
     def store(self, out: Path) -> None:
-        """Store as .xlsx, .ods or .pdf, by the ending of `out`, replacing a file of that name."""
+        """Compute everything and store as .xlsx, .ods or .pdf, by the ending of `out`.
+
+        A file of that name is replaced.
+        """
+        self.calculate()
         handle, temporary = tempfile.mkstemp(suffix=out.suffix, dir=out.parent or ".")
         os.close(handle)
         try:

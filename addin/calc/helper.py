@@ -52,13 +52,14 @@ def properties(**values: Any) -> tuple[Any, ...]:
 class Office:
     """The running LibreOffice and the workbooks open in it."""
 
+    OPTIONS = ("--headless", "--norestore", "--nologo", "--nodefault", "--nofirststartwizard")
+
     def __init__(self, soffice: str, folder: str, options: list[str]) -> None:
         self.books: dict[int, Any] = {}
         pipe = "tausheet" + secrets.token_hex(8)
         profile = uno.systemPathToFileUrl(os.path.join(folder, "profile"))
-        command = [soffice, "--headless", "--norestore", "--nologo", "--nodefault"]
-        command += ["--nofirststartwizard", f"-env:UserInstallation={profile}"]
-        command += [f"--accept=pipe,name={pipe};urp;", *options]
+        command = [soffice, f"-env:UserInstallation={profile}", *options, *self.OPTIONS]
+        command.append(f"--accept=pipe,name={pipe};urp;")
         # importing uno put URE_BOOTSTRAP into the environment of C, which os.environ does not have
         self.process = subprocess.Popen(
             command, stdin=subprocess.DEVNULL, stdout=2, stderr=2, env=dict(os.environ)
@@ -111,20 +112,18 @@ class Office:
             for address, value in values.items():
                 enter(sheets.getByName(title).getCellRangeByName(address), value)
 
+    def calculate(self, number: int) -> None:
+        """Compute every formula."""
+        self.book(number).calculateAll()
+
     def values(self, number: int) -> dict[str, dict[str, Any]]:
-        """Compute everything; the value of each formula cell."""
-        document = self.book(number)
-        document.calculateAll()
-        return {sheet.Name: formula_values(sheet) for sheet in document.Sheets}
+        """The value of each formula cell."""
+        return {sheet.Name: formula_values(sheet) for sheet in self.book(number).Sheets}
 
     def store(self, number: int, path: str) -> None:
         """Write a workbook, or its printed form, by the ending of the name."""
-        document = self.book(number)
-        document.calculateAll()
-        name = _FILTERS[os.path.splitext(path)[1].lower()]
-        document.storeToURL(
-            uno.systemPathToFileUrl(path), properties(FilterName=name, Overwrite=True)
-        )
+        how = properties(FilterName=_FILTERS[os.path.splitext(path)[1].lower()], Overwrite=True)
+        self.book(number).storeToURL(uno.systemPathToFileUrl(path), how)
 
     def close(self, number: int) -> None:
         """Close a workbook without storing it."""
