@@ -16,7 +16,7 @@ from openpyxl.worksheet.formula import ArrayFormula
 from tausheet.addin.cells import CellValue
 from tausheet.addin.embedded.parser import Area, Formula, Unknown
 from tausheet.addin.embedded.refused import Refused
-from tausheet.addin.embedded.values import Value, top_left
+from tausheet.addin.embedded.values import NotHere, Value, top_left
 from tausheet.functions.errors import ErrorKind
 
 Key = tuple[str, int, int]
@@ -148,8 +148,10 @@ class Book:
         block = self._texts[key][1]
         try:
             value: Value = self._formulas[key].run()
+        except NotHere as unknown:
+            raise Refused(_address(key), f"it uses {unknown}") from None
         except Exception as defect:
-            raise Refused(_address(key), f"it could not be computed ({defect})") from defect
+            raise Refused(_address(key), f"it could not be computed ({defect!r})") from defect
         if block is None:
             self._cells[key] = _shown(top_left(value))
             return

@@ -8,15 +8,16 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from typing import Any
 
+from tausheet.addin.embedded.operators import subtracted
 from tausheet.addin.embedded.values import (
     Grid,
+    NotHere,
     Scalar,
     Value,
     cells,
     compared,
     each,
     finite,
-    nearly_equal,
     number,
     text,
     top_left,
@@ -25,10 +26,6 @@ from tausheet.addin.embedded.values import (
 from tausheet.functions.errors import ErrorKind
 
 VALUE = ErrorKind.VALUE
-
-
-class NotHere(Exception):
-    """A use of a built-in function that this engine does not know."""
 
 
 @dataclass(frozen=True)
@@ -97,14 +94,16 @@ def _round(value: float, places: float = 0.0) -> float:
 def _mod(value: float, divisor: float) -> float | ErrorKind:
     if divisor == 0:
         return ErrorKind.DIV0
-    quotient = math.floor(_settled(value / divisor))
-    return value - quotient * divisor
+    return subtracted(value, math.floor(_settled(value / divisor)) * divisor)
 
 
 def _settled(value: float) -> float:
-    """A number that is a whole one but for its last bits, as that whole one."""
-    nearest = float(round(value)) if abs(value) < 2.0**52 else value
-    return nearest if nearly_equal(value, nearest) else value
+    """A number to 15 digits, so that 2.9999999999999996 counts as 3; large ones as they are."""
+    return float(f"{value:.15g}") if abs(value) < 2.0**41 else value
+
+
+def _circular(function: Callable[[float], float]) -> Callable[[float], float | ErrorKind]:
+    return lambda angle: function(angle) if abs(angle) < 2.0**63 else VALUE
 
 
 def _numbers(values: tuple[Value, ...]) -> Iterator[float | ErrorKind]:
@@ -199,6 +198,8 @@ def _countif(area: Value, criterion: Value) -> Scalar:
         if re.search(r"[*?~]", written) or not written:
             raise NotHere("COUNTIF with a pattern or nothing as its criterion")
         as_number = number(written)
+        if not found[1] and not isinstance(as_number, ErrorKind):
+            raise NotHere("COUNTIF with a number written as a text")
         wanted = written if isinstance(as_number, ErrorKind) else as_number
     if isinstance(wanted, str) and sign not in ("=", "<>"):
         raise NotHere("COUNTIF with an order of texts")
@@ -327,7 +328,7 @@ def _whole(call: Callable[..., Any], least: int, most: int) -> Builtin:
 
 BUILTINS: dict[str, Builtin] = {
     "ABS": _each(_of_numbers(abs), 1),
-    "COS": _each(_of_numbers(math.cos), 1),
+    "COS": _each(_of_numbers(_circular(math.cos)), 1),
     "EXP": _each(_of_numbers(math.exp), 1),
     "INT": _each(_of_numbers(lambda x: float(math.floor(_settled(x)))), 1),
     "LN": _each(_of_numbers(math.log), 1),
@@ -335,7 +336,7 @@ BUILTINS: dict[str, Builtin] = {
     "MOD": _each(_of_numbers(_mod), 2),
     "ROUND": _each(_of_numbers(_round), 1, 2),
     "SIGN": _each(_of_numbers(lambda x: float((x > 0) - (x < 0))), 1),
-    "SIN": _each(_of_numbers(math.sin), 1),
+    "SIN": _each(_of_numbers(_circular(math.sin)), 1),
     "SQRT": _each(_of_numbers(math.sqrt), 1),
     "PI": _each(lambda: math.pi, 0),
     "NA": _each(lambda: ErrorKind.NA, 0),

@@ -10,6 +10,7 @@ from tausheet.addin.embedded.values import (
     Scalar,
     compared,
     finite,
+    in_order,
     nearly_equal,
     number,
     text,
@@ -22,7 +23,8 @@ def _added(a: float, b: float) -> float:
     return 0.0 if a * b < 0 and nearly_equal(a, -b) else a + b
 
 
-def _subtracted(a: float, b: float) -> float:
+def subtracted(a: float, b: float) -> float:
+    """a - b, or 0 when they all but agree."""
     return 0.0 if a * b > 0 and nearly_equal(a, b) else a - b
 
 
@@ -31,12 +33,14 @@ def _divided(a: float, b: float) -> float | ErrorKind:
 
 
 def _raised(a: float, b: float) -> float | ErrorKind:
+    root = 1 / b if b else 0.0
+    odd = a < 0 and abs(root) < 2.0**31 and round(root) % 2 and nearly_equal(1 / round(root), b)
     try:
-        return math.pow(a, b)
-    except OverflowError:
+        power = -math.pow(-a, b) if odd else math.pow(a, b)
+    except (OverflowError, ValueError):
         return ErrorKind.NUM
-    except ValueError:
-        return ErrorKind.DIV0 if a == 0 else ErrorKind.NUM
+    # too small for a number counts as an error, as in LibreOffice
+    return power if power or not a else ErrorKind.NUM
 
 
 def _arithmetic(function: Callable[[float, float], float | ErrorKind]) -> Callable[..., Scalar]:
@@ -52,9 +56,11 @@ def _arithmetic(function: Callable[[float, float], float | ErrorKind]) -> Callab
     return on_values
 
 
-def _comparison(decide: Callable[[int, int], bool]) -> Callable[..., Scalar]:
+def _comparison(
+    decide: Callable[[int, int], bool], order: Callable[..., int | ErrorKind] = compared
+) -> Callable[..., Scalar]:
     def on_values(a: Scalar, b: Scalar) -> Scalar:
-        side = compared(a, b)
+        side = order(a, b)
         return side if isinstance(side, ErrorKind) else decide(side, 0)
 
     return on_values
@@ -62,9 +68,9 @@ def _comparison(decide: Callable[[int, int], bool]) -> Callable[..., Scalar]:
 
 def _joined(a: Scalar, b: Scalar) -> Scalar:
     left, right = text(a), text(b)
-    if isinstance(left, ErrorKind):
-        return left
-    return right if isinstance(right, ErrorKind) else left + right
+    if isinstance(right, ErrorKind):
+        return right
+    return left if isinstance(left, ErrorKind) else left + right
 
 
 def negated(value: Scalar) -> Scalar:
@@ -86,17 +92,17 @@ def percent(value: Scalar) -> Scalar:
 
 BINARY: dict[str, Callable[..., Scalar]] = {
     "+": _arithmetic(_added),
-    "-": _arithmetic(_subtracted),
+    "-": _arithmetic(subtracted),
     "*": _arithmetic(operator.mul),
     "/": _arithmetic(_divided),
     "^": _arithmetic(_raised),
     "&": _joined,
     "=": _comparison(operator.eq),
     "<>": _comparison(operator.ne),
-    "<": _comparison(operator.lt),
-    ">": _comparison(operator.gt),
-    "<=": _comparison(operator.le),
-    ">=": _comparison(operator.ge),
+    "<": _comparison(operator.lt, in_order),
+    ">": _comparison(operator.gt, in_order),
+    "<=": _comparison(operator.le, in_order),
+    ">=": _comparison(operator.ge, in_order),
 }
 
 BINDING = {

@@ -20,6 +20,12 @@ Value: TypeAlias = Any
 """A scalar, or a grid: the rows of a range."""
 
 _NUMBER = re.compile(r"\s*[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?\s*")
+
+
+class NotHere(Exception):
+    """A use of an operator or a function that this engine does not know."""
+
+
 _CLOSE, _FAR = 2.0**-48, 2.0**-44
 
 
@@ -37,28 +43,28 @@ def number(value: Scalar) -> float | ErrorKind:
 
 
 def text(value: Scalar) -> str | ErrorKind:
-    """A value where a text belongs: a number with 15 digits at most."""
+    """A value where a text belongs: a number with 15 digits at most, TRUE as 1."""
     if isinstance(value, (str, ErrorKind)):
         return value
     if value is None:
         return ""
-    if isinstance(value, bool):
-        return str(value).upper()
-    return digits(value)
+    return digits(float(value))
 
 
 def digits(value: float) -> str:
-    """A number as the text that & makes of it."""
+    """A number as the text that & makes of it, with LibreOffice's three digits of exponent."""
     if value == 0:
         return "0"
     rounded = Decimal(f"{value:.14e}").normalize()
     exponent = rounded.adjusted()
-    if -20 < exponent < 15 and len(f"{rounded:f}".lstrip("-")) <= 22:
+    whole_fits = exponent == 15 and float(rounded) == value
+    if (-20 < exponent < 15 or whole_fits) and len(f"{rounded:f}".lstrip("-")) <= 22:
         return f"{rounded:f}"
     sign, figures, _ = rounded.as_tuple()
-    whole, rest = str(figures[0]), "".join(map(str, figures[1:]))
-    mantissa = f"{whole}.{rest}" if rest else whole
-    return f"{'-' if sign else ''}{mantissa}E{'+' if exponent >= 0 else '-'}{abs(exponent):02d}"
+    mantissa = ".".join(
+        filter(None, ("".join(map(str, figures[:1])), "".join(map(str, figures[1:]))))
+    )
+    return f"{'-' if sign else ''}{mantissa}E{exponent:+04d}"
 
 
 def finite(value: float) -> float | ErrorKind:
@@ -91,10 +97,19 @@ def compared(a: Scalar, b: Scalar) -> int | ErrorKind:
             return -1
         if not isinstance(b, str) and b is not None:
             return 1
-        left, right = (a or "").casefold(), (b or "").casefold()
+        left, right = str(a or "").casefold(), str(b or "").casefold()
         return (left > right) - (left < right)
     x, y = float(a or 0.0), float(b or 0.0)  # type: ignore[arg-type]
     return 0 if nearly_equal(x, y) else (x > y) - (x < y)
+
+
+def in_order(a: Scalar, b: Scalar) -> int | ErrorKind:
+    """As `compared`, for < and >: of texts only plain letters and digits have a known order."""
+    if isinstance(a, str) and isinstance(b, str) and a.casefold() != b.casefold():
+        both = a + b
+        if not (both.isascii() and both.isalnum()):
+            raise NotHere("the order of texts other than plain letters and digits")
+    return compared(a, b)
 
 
 def truth(value: Scalar) -> bool | ErrorKind:
