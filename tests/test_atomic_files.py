@@ -1,0 +1,118 @@
+"""No file is lost: whole or not at all, never over another, whatever kills the process."""
+
+from __future__ import annotations
+
+import os
+import random
+import signal
+import stat
+import subprocess
+import sys
+import time
+from pathlib import Path
+
+import pytest
+
+from tausheet.addin.files import NotWritten, replacing
+
+OLD = b"old " * 50_000
+NEW = b"new " * 60_000
+
+# writes the same file again and again, so that a kill falls anywhere in it
+WRITER = f"""
+import sys
+from pathlib import Path
+from tausheet.addin.files import replacing
+target = Path(sys.argv[1])
+print("ready", flush=True)
+while True:
+    with replacing(target, force=True) as temporary:
+        with temporary.open("wb") as file:
+            for _ in range(60):
+                file.write({NEW[:4]!r} * 1000)
+    with replacing(target, force=True) as temporary:
+        temporary.write_bytes({OLD[:4]!r} * 50_000)
+"""
+
+
+def test_a_process_killed_at_any_moment_leaves_a_whole_file(tmp_path: Path) -> None:
+    target = tmp_path / "sheet.xlsx"
+    target.write_bytes(OLD)
+    moments = random.Random(4)
+    for _ in range(25):
+        writer = subprocess.Popen(
+            [sys.executable, "-c", WRITER, str(target)], stdout=subprocess.PIPE
+        )
+        assert writer.stdout is not None
+        writer.stdout.readline()
+        time.sleep(moments.uniform(0, 0.03))
+        writer.send_signal(signal.SIGKILL)
+        writer.wait()
+        writer.stdout.close()
+        assert target.read_bytes() in (OLD, NEW)
+
+
+def test_an_existing_file_stays_without_force(tmp_path: Path) -> None:
+    target = tmp_path / "sheet.xlsx"
+    target.write_bytes(OLD)
+    with (
+        pytest.raises(NotWritten, match=r"exists; choose another name, or give --force"),
+        replacing(target, force=False) as temporary,
+    ):
+        temporary.write_bytes(NEW)
+    assert target.read_bytes() == OLD
+    assert os.listdir(tmp_path) == ["sheet.xlsx"]
+
+
+def test_a_file_that_appears_meanwhile_stays(tmp_path: Path) -> None:
+    target = tmp_path / "sheet.xlsx"
+    with (
+        pytest.raises(NotWritten, match="exists"),
+        replacing(target, force=False) as temporary,
+    ):
+        temporary.write_bytes(NEW)
+        target.write_bytes(OLD)
+    assert target.read_bytes() == OLD
+    assert os.listdir(tmp_path) == ["sheet.xlsx"]
+
+
+def test_a_failure_inside_leaves_the_old_file_and_no_rubbish(tmp_path: Path) -> None:
+    target = tmp_path / "sheet.xlsx"
+    target.write_bytes(OLD)
+    with pytest.raises(ZeroDivisionError), replacing(target, force=True) as temporary:
+        temporary.write_bytes(NEW)
+        raise ZeroDivisionError
+    assert target.read_bytes() == OLD
+    assert os.listdir(tmp_path) == ["sheet.xlsx"]
+
+
+def test_permissions_are_kept_and_new_files_get_the_usual_ones(tmp_path: Path) -> None:
+    old, new, plain = tmp_path / "old", tmp_path / "new", tmp_path / "plain"
+    old.write_bytes(OLD)
+    old.chmod(0o640)
+    plain.write_bytes(OLD)
+    for path in (old, new):
+        with replacing(path, force=True) as temporary:
+            temporary.write_bytes(NEW)
+    assert stat.S_IMODE(old.stat().st_mode) == 0o640
+    assert stat.S_IMODE(new.stat().st_mode) == stat.S_IMODE(plain.stat().st_mode)
+
+
+def test_a_link_stays_a_link(tmp_path: Path) -> None:
+    real, link = tmp_path / "real.xlsx", tmp_path / "link.xlsx"
+    real.write_bytes(OLD)
+    link.symlink_to(real)
+    with replacing(link, force=True) as temporary:
+        temporary.write_bytes(NEW)
+    assert link.is_symlink()
+    assert real.read_bytes() == NEW
+
+
+def test_a_place_that_cannot_be_written_is_named(tmp_path: Path) -> None:
+    with (
+        pytest.raises(NotWritten, match="cannot be written"),
+        replacing(tmp_path / "missing" / "x.xlsx", force=False),
+    ):
+        raise AssertionError("the block must not run")
+    with pytest.raises(NotWritten, match="is a folder"), replacing(tmp_path, force=True):
+        raise AssertionError("the block must not run")
