@@ -7,7 +7,8 @@ import functools
 from collections.abc import Sequence
 from pathlib import Path
 
-from tausheet.addin.calc.driver import Book, Calc, CalcError, Values
+from tausheet.addin.calc.driver import Book, Calc, Values
+from tausheet.addin.calc.helper_process import CalcError
 
 __all__ = ["Book", "Calc", "CalcError", "Values", "compute", "pdf"]
 

@@ -129,6 +129,14 @@ class Office:
         """Close a workbook without storing it."""
         self.books.pop(number).close(True)
 
+    def lives(self) -> bool:
+        """Whether LibreOffice still answers."""
+        try:
+            self.desktop.getCurrentComponent()
+        except Exception:
+            return False
+        return True
+
     def end(self) -> None:
         """End LibreOffice."""
         with contextlib.suppress(Exception):  # it breaks the connection while it answers
@@ -168,7 +176,7 @@ def enter(cell: Any, value: Any) -> None:
         cell.setValue(value)
         done = cell.getValue() == value
     if not done:
-        raise Refused(f"cell {cell.AbsoluteName} is protected and takes no value")
+        raise Refused(f"cell {cell.AbsoluteName} cannot hold {value}")
 
 
 def formula_values(sheet: Any) -> dict[str, Any]:
@@ -238,9 +246,8 @@ def main() -> None:
         except Refused as error:
             answer(refused=str(error))
         except Exception as error:
-            gone = "Disposed" in type(error).__name__ or office.process.poll() is not None
             said = f"{type(error).__name__}: {error}"[:300]
-            answer(**{"died" if gone else "refused": said})
+            answer(**{"refused" if office.lives() else "died": said})
     office.end()
     shutil.rmtree(sys.argv[2], ignore_errors=True)
 

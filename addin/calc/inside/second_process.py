@@ -6,6 +6,7 @@ the process twice, is an error in its cell.
 
 from __future__ import annotations
 
+import contextlib
 import os
 import pickle
 import struct
@@ -53,8 +54,9 @@ class SecondProcess:
         if self._process is not None:
             self._process.kill()
             self._process.wait()
-            self._process.stdin.close()
-            self._process.stdout.close()
+            for pipe in (self._process.stdin, self._process.stdout):
+                with contextlib.suppress(OSError):  # what was to be sent goes to nobody
+                    pipe.close()
             self._process = None
 
     def _answer(self, call: Any) -> Any:
