@@ -14,8 +14,23 @@ from tausheet.functions.frequency import corner_frequency, gain_db, noise_bandwi
 from tausheet.functions.overload import trip_time
 from tausheet.functions.parts import preferred, rkm, rkm_text
 from tausheet.functions.periodic import Ripple, ripple
-from tausheet.functions.response import step
+from tausheet.functions.response import decay, natural, pulse, ramp, sine, square, step
 from tausheet.functions.service import reason, version
+from tausheet.functions.step_times import (
+    rise_time,
+    settling_time,
+    time_to,
+    time_until_above,
+    time_until_below,
+)
+from tausheet.functions.time_constants import (
+    parallel,
+    resistance_at,
+    tau_for,
+    tau_rc,
+    tau_rl,
+    tau_rx,
+)
 from tausheet.functions.tolerance import corners, draw
 from tausheet.functions.units import in_unit, si, text
 
@@ -28,6 +43,7 @@ __all__ = [
     "corners",
     "dc_offset",
     "dc_worst",
+    "decay",
     "dissipated",
     "draw",
     "energy_c",
@@ -39,19 +55,35 @@ __all__ = [
     "gain_db",
     "i2t",
     "in_unit",
+    "natural",
     "noise_bandwidth",
+    "parallel",
     "peak_factor",
     "phase",
     "preferred",
+    "pulse",
+    "ramp",
     "reason",
+    "resistance_at",
     "ride_through",
     "ripple",
+    "rise_time",
     "rkm",
     "rkm_text",
+    "settling_time",
     "si",
+    "sine",
+    "square",
     "step",
     "tau_at",
+    "tau_for",
+    "tau_rc",
+    "tau_rl",
+    "tau_rx",
     "text",
+    "time_to",
+    "time_until_above",
+    "time_until_below",
     "trip_time",
     "version",
 ]

@@ -3,11 +3,45 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
+from typing import Any
 
 import numpy as np
 
-from tausheet.functions.arguments import Finite, NonNegative, Numbers, Positive
+from tausheet.functions.arguments import (
+    ClosedFraction,
+    Finite,
+    NonNegative,
+    Numbers,
+    Positive,
+)
 from tausheet.functions.catalogue import cell_function
+from tausheet.functions.exact import Array
+from tausheet.functions.from_rest import (
+    decay_share,
+    fall_and_lag,
+    pulse_shares,
+    ramp_shares,
+    sine_share,
+    square_shares,
+)
+
+_BLOCK = 8192
+"""Elements worked on at a time, so that what lies between stays in the processor's cache."""
+
+
+def _in_blocks(compute: Callable[..., Array], *arguments: Any) -> Array:
+    """An element-wise computation, in blocks where its arguments are long columns."""
+    shape = np.broadcast_shapes(*(np.shape(a) for a in arguments))
+    size = math.prod(shape)
+    if size <= _BLOCK or any(np.shape(a) not in ((), shape) for a in arguments):
+        return compute(*arguments)
+    flat = [np.asarray(a) if np.shape(a) == () else np.asarray(a).ravel() for a in arguments]
+    out = np.empty(size)
+    for start in range(0, size, _BLOCK):
+        part = slice(start, start + _BLOCK)
+        out[part] = compute(*(a if a.ndim == 0 else a[part] for a in flat))
+    return out.reshape(shape)
 
 
 def _step_scalar(
@@ -17,15 +51,49 @@ def _step_scalar(
         type(t) is type(tau) is type(initial) is type(final) is type(delay) is float
         and tau > 0.0 <= delay
         and tau + delay < math.inf
-        and math.isfinite(t + initial + final)
+        and math.isfinite(t)
+        and math.isfinite(initial)
+        and math.isfinite(final)
     ):
         return None
     if t <= delay:
         return initial
-    u = (delay - t) / tau
-    if u > -0.5:
-        return initial - (final - initial) * math.expm1(u)
-    return final + (initial - final) * math.exp(u)
+    u = (t - delay) / tau
+    if u < 0.5:
+        rest = -math.expm1(-u)
+        return initial * (1.0 - rest) + final * rest
+    fall = math.exp(-u)
+    return initial * fall + final * (1.0 - fall)
+
+
+def _natural_scalar(t: float, tau: float, initial: float) -> float | None:
+    return _step_scalar(t, tau, initial, 0.0)
+
+
+@cell_function("FO_NATURAL", "Response", scalar=_natural_scalar)
+def natural(t: Finite, tau: Positive, initial: Finite) -> Numbers:
+    """Natural response: y decays to 0 from its initial value.
+
+        y(t) = initial exp(-t / tau)    for t > 0
+
+    Arguments:
+        t: time after switching (s); any number
+        tau: time constant (s); number > 0
+        initial: value of y until t = 0; any number
+
+    Result: y(t) in the unit of initial, in the broadcast shape of the arguments.
+
+    Errors: #NUM! outside the ranges, #VALUE! for a blank or a text.
+
+    Assumes: one energy store, constant parts.
+
+    Example:
+        >>> round(natural(1.0, 1.0, 5.0), 12)
+        1.839397205857
+
+    References: closed form of tau dy/dt + y = 0.
+    """
+    return _in_blocks(lambda t, tau, y0: y0 * np.exp(-np.maximum(t, 0.0) / tau), t, tau, initial)
 
 
 @cell_function("FO_STEP", "Response", scalar=_step_scalar)
@@ -55,6 +123,252 @@ def step(
 
     References: closed form of tau dy/dt + y = x.
     """
-    u = -np.maximum(t - delay, 0.0) / tau
-    early = initial - (final - initial) * np.expm1(u)
-    return np.where(u > -0.5, early, final + (initial - final) * np.exp(u))
+    return _in_blocks(_step, t, tau, initial, final, delay)
+
+
+def _step(t: Array, tau: Array, initial: Array, final: Array, delay: Array) -> Array:
+    fall, rest = fall_and_lag(np.maximum(t - delay, 0.0), tau)
+    return initial * fall + final * rest
+
+
+@cell_function("FO_RAMP", "Response")
+def ramp(
+    t: Finite,
+    tau: Positive,
+    initial: Finite,
+    level_from: Finite,
+    level_to: Finite,
+    duration: NonNegative,
+) -> Numbers:
+    """Response to a straight line from one level to another, which then holds.
+
+        x(t) = level_from + (level_to - level_from) t / duration,   level_to from duration on
+
+    Arguments:
+        t: time after switching (s); any number
+        tau: time constant (s); number > 0
+        initial: value of y until t = 0; any number
+        level_from: level of the forcing at t = 0; any number
+        level_to: level of the forcing from duration on; any number
+        duration: time that the line takes (s), 0 for a step; number >= 0
+
+    Result: y(t) in the unit of the levels, in the broadcast shape of the arguments.
+
+    Errors: #NUM! outside the ranges, #VALUE! for a blank or a text.
+
+    Assumes: one energy store, constant parts.
+
+    Example:
+        >>> round(ramp(1.0, 1.0, 0.0, 0.0, 5.0, 1.0), 12)
+        1.839397205857
+
+    References: closed form of tau dy/dt + y = x.
+    """
+    return _in_blocks(_ramp, t, tau, initial, level_from, level_to, duration)
+
+
+def _ramp(t: Array, tau: Array, initial: Array, start: Array, end: Array, length: Array) -> Array:
+    t = np.maximum(t, 0.0)
+    of_start, of_end = ramp_shares(t, tau, length)
+    result: Array = initial * np.exp(-t / tau) + start * of_start + end * of_end
+    return result
+
+
+@cell_function("FO_SINE", "Response")
+def sine(
+    t: Finite,
+    tau: Positive,
+    initial: Finite,
+    amplitude: Finite,
+    frequency: NonNegative,
+    phase: Finite = 0.0,
+    offset: Finite = 0.0,
+) -> Numbers:
+    """Response to a sine, switched on at t = 0.
+
+        x(t) = offset + amplitude sin(2 pi frequency t + phase)
+
+    Arguments:
+        t: time after switching (s); any number
+        tau: time constant (s); number > 0
+        initial: value of y until t = 0; any number
+        amplitude: amplitude of the sine; any number
+        frequency: frequency (Hz); number >= 0
+        phase: phase at t = 0 (degrees); any number
+        offset: level about which the sine swings; any number
+
+    Result: y(t) in the unit of the amplitude, in the broadcast shape of the arguments.
+
+    Errors: #NUM! outside the ranges, #VALUE! for a blank or a text.
+
+    Assumes: one energy store, constant parts.
+
+    Example:
+        >>> round(sine(0.01, 0.01, 0.0, 325.0, 50.0), 9)
+        128.48940491
+
+    References: closed form of tau dy/dt + y = x.
+    """
+    return _in_blocks(_sine, t, tau, initial, amplitude, frequency, phase, offset)
+
+
+def _sine(
+    t: Array,
+    tau: Array,
+    initial: Array,
+    amplitude: Array,
+    frequency: Array,
+    phase: Array,
+    offset: Array,
+) -> Array:
+    t = np.maximum(t, 0.0)
+    fall, rest = fall_and_lag(t, tau)
+    result: Array = (
+        initial * fall + offset * rest + amplitude * sine_share(t, tau, frequency, phase)
+    )
+    return result
+
+
+@cell_function("FO_DECAY", "Response")
+def decay(
+    t: Finite,
+    tau: Positive,
+    initial: Finite,
+    amplitude: Finite,
+    source_tau: Positive,
+    offset: Finite = 0.0,
+) -> Numbers:
+    """Response to a forcing that decays with a time constant of its own.
+
+        x(t) = offset + amplitude exp(-t / source_tau)
+
+    Arguments:
+        t: time after switching (s); any number
+        tau: time constant (s); number > 0
+        initial: value of y until t = 0; any number
+        amplitude: what decays, at t = 0; any number
+        source_tau: time constant of the source (s), which may equal tau; number > 0
+        offset: level that the forcing decays to; any number
+
+    Result: y(t) in the unit of the amplitude, in the broadcast shape of the arguments.
+
+    Errors: #NUM! outside the ranges, #VALUE! for a blank or a text.
+
+    Assumes: one energy store, constant parts.
+
+    Example:
+        >>> round(decay(1.0, 1.0, 0.0, 5.0, 1.0), 12)
+        1.839397205857
+
+    References: closed form of tau dy/dt + y = x.
+    """
+    return _in_blocks(_decay, t, tau, initial, amplitude, source_tau, offset)
+
+
+def _decay(
+    t: Array, tau: Array, initial: Array, amplitude: Array, source_tau: Array, offset: Array
+) -> Array:
+    t = np.maximum(t, 0.0)
+    fall, rest = fall_and_lag(t, tau)
+    result: Array = initial * fall + offset * rest + amplitude * decay_share(t, tau, source_tau)
+    return result
+
+
+@cell_function("FO_PULSE", "Response")
+def pulse(
+    t: Finite,
+    tau: Positive,
+    initial: Finite,
+    resting: Finite,
+    level: Finite,
+    duration: NonNegative,
+    delay: NonNegative = 0.0,
+) -> Numbers:
+    """Response to one pulse: y heads for `resting`, during the pulse for `level`.
+
+        x(t) = level from delay to delay + duration, resting before and after
+
+    Arguments:
+        t: time after switching (s); any number
+        tau: time constant (s); number > 0
+        initial: value of y until t = 0; any number
+        resting: level of the forcing before and after the pulse; any number
+        level: level of the forcing during the pulse; any number
+        duration: length of the pulse (s); number >= 0
+        delay: time from t = 0 until the pulse (s); number >= 0
+
+    Result: y(t) in the unit of the levels, in the broadcast shape of the arguments.
+
+    Errors: #NUM! outside the ranges, #VALUE! for a blank or a text.
+
+    Assumes: one energy store, constant parts.
+
+    Example:
+        >>> round(pulse(2.0, 1.0, 0.0, 0.0, 5.0, 1.0), 12)
+        1.162720789674
+
+    References: closed form of tau dy/dt + y = x.
+    """
+    return _in_blocks(_pulse, t, tau, initial, resting, level, duration, delay)
+
+
+def _pulse(
+    t: Array,
+    tau: Array,
+    initial: Array,
+    resting: Array,
+    level: Array,
+    duration: Array,
+    delay: Array,
+) -> Array:
+    t = np.maximum(t, 0.0)
+    of_resting, of_level = pulse_shares(t, tau, duration, delay)
+    result: Array = initial * np.exp(-t / tau) + resting * of_resting + level * of_level
+    return result
+
+
+@cell_function("FO_SQUARE", "Response")
+def square(
+    t: Finite,
+    tau: Positive,
+    initial: Finite,
+    low: Finite,
+    high: Finite,
+    period: Positive,
+    duty: ClosedFraction,
+) -> Numbers:
+    """Response to a square that repeats from t = 0: high for duty x period, then low.
+
+    The periods that are over are summed as a geometric series: exact at any number of them.
+
+    Arguments:
+        t: time after switching (s); any number
+        tau: time constant (s); number > 0
+        initial: value of y until t = 0; any number
+        low: level for the rest of each period; any number
+        high: level for duty x period; any number
+        period: period (s); number > 0
+        duty: share of the period at high, a fraction; number >= 0 and <= 1
+
+    Result: y(t) in the unit of the levels, in the broadcast shape of the arguments.
+
+    Errors: #NUM! outside the ranges, #VALUE! for a blank or a text.
+
+    Assumes: one energy store, constant parts, a response free to follow in both directions.
+
+    Example:
+        >>> round(square(1.0, 1.0, 0.0, 0.0, 5.0, 2.0, 0.5), 12)
+        3.160602794143
+
+    References: closed form of tau dy/dt + y = x, geometric series over the periods.
+    """
+    return _in_blocks(_square, t, tau, initial, low, high, period, duty)
+
+
+def _square(
+    t: Array, tau: Array, initial: Array, low: Array, high: Array, period: Array, duty: Array
+) -> Array:
+    t = np.maximum(t, 0.0)
+    of_low, of_high = square_shares(t, tau, period, duty)
+    result: Array = initial * np.exp(-t / tau) + low * of_low + high * of_high
+    return result
