@@ -14,6 +14,7 @@ from openpyxl.worksheet.worksheet import Worksheet
 
 from tausheet.functions.units import units_of
 from tausheet.templates import style
+from tausheet.templates.formulas import SheetError
 from tausheet.templates.model import COUNT, NUMBER, Entry, Quantity, Sheet
 from tausheet.templates.values import Typed
 
@@ -42,9 +43,13 @@ class Book:
         self.tables = self.workbook.create_sheet(TABLES)
         self.quantity_of = {q.symbol: q.quantity for q in sheet.quantities()}
         self.check_rows: list[int] = []
+        self._names: set[str] = set()
 
     def define(self, name: str, worksheet: Worksheet, first: str, last: str = "") -> None:
         """Give a cell (as a range of one by one) or a range a name."""
+        if name.lower() in self._names:
+            raise SheetError(f"{self.sheet.name}: {name} is a name of the page itself")
+        self._names.add(name.lower())
         target = f"{absolute_coordinate(first)}:{absolute_coordinate(last or first)}"
         self.workbook.defined_names[name] = DefinedName(
             name, attr_text=f"{quoted(worksheet)}!{target}"
