@@ -16,6 +16,7 @@ from tausheet.functions.parts import preferred, rkm, rkm_text
 from tausheet.functions.periodic import Ripple, ripple
 from tausheet.functions.response import decay, natural, pulse, ramp, sine, square, step
 from tausheet.functions.service import reason, version
+from tausheet.functions.sources import rate, superpose
 from tausheet.functions.step_times import (
     rise_time,
     settling_time,
@@ -63,6 +64,7 @@ __all__ = [
     "preferred",
     "pulse",
     "ramp",
+    "rate",
     "reason",
     "resistance_at",
     "ride_through",
@@ -75,6 +77,7 @@ __all__ = [
     "sine",
     "square",
     "step",
+    "superpose",
     "tau_at",
     "tau_for",
     "tau_rc",

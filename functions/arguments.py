@@ -221,7 +221,7 @@ class Number(Spec):
             value = float(raw)
         except OverflowError:
             raise self.wrong(raw, parameter, DomainError) from None
-        if not self._allowed(value):
+        if not self.allows(value):
             raise self.wrong(value, parameter, DomainError)
         if value == 0 and self._zero_refused(parameter):
             raise DomainError(
@@ -231,7 +231,8 @@ class Number(Spec):
             )
         return value
 
-    def _allowed(self, value: float) -> bool:
+    def allows(self, value: float) -> bool:
+        """Whether a number lies within the bounds."""
         return bool(
             math.isfinite(value)
             and (value > self.low if self.low_open else value >= self.low)
