@@ -37,22 +37,19 @@ PAGE_POINTS = 708.0
 
 MARGINS = {"left": 0.55, "right": 0.55, "top": 0.5, "bottom": 0.5, "header": 0.25, "footer": 0.25}
 
-SIGNIFICANT = "[>=99.95]0.0;[>=9.995]0.00;0.000"
-"""Four digits for a number from 1 to 999, which is how a result in a readable unit stands."""
+READABLE = "[>=99950]0.00E+00;[>=99.95]0.0;0.000"
+"""Four or five digits for a result in the unit in which it reads well."""
 PLAIN = "General"
+RELATIVE = '[<-99.995]"< -9999 %";0.0%'
+TINY = "0.0E+00;-0.0E+00;0"
 
 
 def in_full(quantity: str, unit: str = "") -> str:
     """The format of a base SI number with more digits than the result beside it shows."""
     mark = f'" {unit}"' if unit else ""
-    power, small, large = f"0.000000E+00{mark}", f"0.000000{mark}", f"0.000{mark}"
-    if quantity in ("resistance", "frequency"):
-        return f"[<1000]{small};[<1000000]{large};{power}"
-    return f"[<0.001]{power};[<1000]{small};{large}"
-
-
-RELATIVE = "0.0%"
-TINY = "0.0E+00;-0.0E+00;0"
+    power, plain = f"0.000000E+00{mark}", f"0.000000{mark}"
+    usual = f"[<100000]{plain};{power}"
+    return usual if quantity == "temperature" else f"[<0.001]{power};{usual}"
 
 
 @cache

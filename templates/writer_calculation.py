@@ -89,7 +89,7 @@ def _shown(
         f"=IF(ISNUMBER({name}),{name}*INDEX({table_name('shown_under', quantity)},{place})"
         f'/INDEX({table_name("shown_over", quantity)},{place}),"no result")'
     )
-    cell.number_format = style.SIGNIFICANT
+    cell.number_format = style.READABLE
     page.text(
         row,
         unit,

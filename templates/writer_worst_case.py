@@ -29,16 +29,15 @@ ALONE = (
     ("B", "what it is", "left"),
     ("C", "lowest", "right"),
     ("D:E", "highest", "right"),
-    ("F", "at lowest", "right"),
-    ("G", "at highest", "right"),
-    ("H", "swing", "right"),
+    ("F", "swing", "right"),
+    ("G", "at lowest", "right"),
+    ("H", "at highest", "right"),
 )
 METHODS = (
-    ("A:B", "method", "left"),
-    ("C", "lowest", "right"),
-    ("D:E", "nominal", "right"),
-    ("F", "highest", "right"),
-    ("G:H", "what it is worth", "right"),
+    ("A:B", "method, and what it is worth", "left"),
+    ("C:D", "lowest", "right"),
+    ("E:F", "nominal", "right"),
+    ("G:H", "highest", "right"),
 )
 
 
@@ -229,11 +228,11 @@ def _on_page(page: Page, book: Book, worst: WorstCase, table: _Corners) -> None:
         for span, formula in (
             ("C", in_words(cell["B"], measured)),
             ("D:E", in_words(cell["C"], measured)),
-            ("F", in_words(cell["D"], quantity)),
-            ("G", in_words(cell["E"], quantity)),
+            ("G", in_words(cell["D"], quantity)),
+            ("H", in_words(cell["E"], quantity)),
         ):
             page.text(row, span, f"={formula}", style.font(8.5), "right")
-        swing = page.text(row, "H", f"=IFERROR({cell['I']}/ABS({of}),NA())", horizontal="right")
+        swing = page.text(row, "F", f"=IFERROR({cell['I']}/ABS({of}),NA())", horizontal="right")
         swing.number_format = style.RELATIVE
         page.frame(row, "A:H", style.UNDER)
     _methods(page, book, worst, table, quantity)
@@ -244,24 +243,21 @@ def _methods(page: Page, book: Book, worst: WorstCase, table: _Corners, quantity
     page.down(6)
     page.head(METHODS)
     rows = (
-        (f"all {table.count} corners", f"{of}_min", of, f"{of}_max", "the bound, used in 7"),
-        ("root-sum-square", f"{of}_rss_lo", of, f"{of}_rss_hi", "likely, if independent"),
+        (f"all {table.count} corners: the bound, used in part 7", f"{of}_min", f"{of}_max"),
+        ("root-sum-square: likely, if independent", f"{of}_rss_lo", f"{of}_rss_hi"),
         (
-            f"draw of {worst.draws}, seed {worst.seed}",
+            f"draw of {worst.draws}, seed {worst.seed}: an estimate, no bound",
             f"{of}_draw_lo",
-            of,
             f"{of}_draw_hi",
-            "an estimate, no bound",
         ),
     )
-    for number, (method, low, nominal, high, worth) in enumerate(rows):
+    for number, (method, low, high) in enumerate(rows):
         row = page.down(15)
         decides = number == 0
-        page.text(row, "A:B", method, style.font(9, bold=decides))
-        for span, name in (("C", low), ("D:E", nominal), ("F", high)):
+        page.text(row, "A:B", method, style.font(8.5, bold=decides))
+        for span, name in (("C:D", low), ("E:F", of), ("G:H", high)):
             formula = f"={in_words(name, quantity)}"
             page.text(row, span, formula, style.font(9, bold=decides), "right")
-        page.text(row, "G:H", worth, style.font(8, colour=style.QUIET), "right")
         page.frame(row, "A:H", style.UNDER)
     end = table.TOP + len(table.parts) - 1
     symbols = area(table.sheet, f"A{table.TOP}", f"A{end}")
