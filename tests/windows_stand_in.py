@@ -98,6 +98,12 @@ def _dispatch(obj: Any, *_: Any, **__: Any) -> Any:
     return obj.target if isinstance(obj, Dispatchable) else obj
 
 
+def _anything_but_dunders(name: str) -> _Anything:
+    if name.startswith("__"):  # what Python itself asks a module for
+        raise AttributeError(name)
+    return _Anything()
+
+
 def _pywin32() -> None:
     def nothing(*_: Any, **__: Any) -> None:
         return None
@@ -145,7 +151,7 @@ def _pywin32() -> None:
     utc = types.SimpleNamespace(utc=lambda: datetime.timezone.utc)
     _module("win32timezone", TimeZoneInfo=utc)
     for name in ("win32api", "win32con", "win32event", "win32gui", "win32process"):
-        _module(name).__getattr__ = lambda _: _Anything()  # type: ignore[method-assign]
+        _module(name).__getattr__ = _anything_but_dunders  # type: ignore[method-assign]
     sys.modules["win32process"].GetWindowThreadProcessId = lambda _: (1, 4711)
 
 
