@@ -14,7 +14,7 @@ from openpyxl.utils.datetime import CALENDAR_WINDOWS_1900, to_excel
 from openpyxl.worksheet.formula import ArrayFormula
 
 from tausheet.addin.cells import CellValue
-from tausheet.addin.embedded.parser import Area, Formula, Unknown
+from tausheet.addin.embedded.parser import Area, Formula, Node, Unknown
 from tausheet.addin.embedded.refused import Refused
 from tausheet.addin.embedded.values import NotHere, Value, top_left
 from tausheet.functions.errors import ErrorKind
@@ -36,6 +36,7 @@ class Book:
             for sheet in workbook.worksheets
             for name, d in sheet.defined_names.items()
         }
+        self.known: dict[tuple[str, str, bool], tuple[Node, list[Area]]] = {}
         self._cells: dict[Key, CellValue] = {}
         self._texts: dict[Key, tuple[str, Area | None]] = {}
         self._filled_by: dict[Key, Key] = {}

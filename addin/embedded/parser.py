@@ -41,6 +41,9 @@ class Unknown(Exception):
 class Cells(Protocol):
     """What a formula needs of its workbook."""
 
+    known: dict[tuple[str, str, bool], tuple[Node, list[Area]]]
+    """What names have been parsed to, by sheet, name and kind of formula."""
+
     def value(self, sheet: str, row: int, column: int) -> Scalar:
         """Value of a cell, computed before."""
 
@@ -171,6 +174,12 @@ class Formula:
             return self._referring(area)
         if "[" in text or "!" in text:
             raise Unknown(f"{text} refers to another workbook, a table or a missing worksheet")
+        key = (self._sheet, text.casefold(), self._array)
+        if key in self._book.known:
+            node, areas = self._book.known[key]
+            self.areas += areas
+            return node
+        first = len(self.areas)
         content = self._book.named(self._sheet, text)
         if content is None:
             raise Unknown(f"the name {text} is not defined")
@@ -181,6 +190,8 @@ class Formula:
             raise Unknown(f"the name {text} stands for a relative reference")
         node = self._parsed("=" + content.removeprefix("="))
         self._names.pop()
+        if "ROW(" not in content.upper():  # which depends on the cell that uses the name
+            self._book.known[key] = (node, self.areas[first:])
         return node
 
     def _area(self, text: str) -> Area | None:
