@@ -51,8 +51,14 @@ def sum_of_products(*pairs: tuple[Any, Any]) -> Array:
 
 def fraction_of_product(a: Any, b: Any) -> Array:
     """a b less the nearest whole number, from -0.5 to 0.5: the part of a turn, however many."""
+    a, a_exponent = np.frexp(a)
+    b, b_exponent = np.frexp(b)
     product, error = two_product(a, b)
-    result: Array = np.asarray((product - np.rint(product)) + error)
+    # with an exponent of 110 both parts are whole numbers already
+    exponent = np.minimum(a_exponent + b_exponent, 110)
+    product, error = np.ldexp(product, exponent), np.ldexp(error, exponent)
+    rest = (product - np.rint(product)) + (error - np.rint(error))
+    result: Array = np.asarray(rest - np.rint(rest))
     return result
 
 

@@ -16,11 +16,12 @@ from tausheet.functions.exact import (
     Array,
     excess_over_sine,
     fraction_of_product,
-    lag_integrals,
+    two_product,
+    two_sum,
 )
 
-_FAST = 1e150
-"""2 pi f tau beyond which a sine leaves nothing in y that a number could show."""
+_STILL = 1e-17
+"""Share of tau below which a period moves y by less than a rounding."""
 
 
 def lag(u: Any) -> Array:
@@ -45,7 +46,12 @@ def fall_and_lag(t: Any, tau: Any) -> tuple[Array, Array]:
 
 def excess(u: Any) -> Array:
     """u - (1 - exp(-u)): tau times it is the response to a slope of 1 per second."""
-    return lag_integrals(u)[0]
+    small = np.minimum(u, 0.5)
+    series = np.ones_like(small)
+    for n in range(15, 2, -1):  # nested: u^2/2 (1 - u/3 (1 - u/4 (...)))
+        series = 1 - small / n * series
+    result: Array = np.where(u < 0.5, small * small / 2 * series, u + np.expm1(-u))
+    return result
 
 
 def ramp_shares(t: Any, tau: Any, duration: Any) -> tuple[Array, Array]:
@@ -67,44 +73,47 @@ def sine_share(t: Any, tau: Any, frequency: Any, phase: Any) -> Array:
     """Response from rest to sin(2 pi f t + phase), the phase in degrees."""
     from scipy.special import cosdg, sindg
 
-    w = np.minimum(2 * np.pi * frequency * tau, _FAST)
+    w = 2 * np.pi * (frequency * tau)
+    # 1/(1 + w^2) and w/(1 + w^2), in a form that neither overflows nor loses the latter
+    direct, across = 1 / (1 + w * w), 1 / (w + 1 / w)
+    turns = fraction_of_product(frequency, t)
+    angle = 2 * np.pi * turns
+    sine, bend = np.sin(angle), 2 * np.sin(angle / 2) ** 2
     u = t / tau
-    turn = fraction_of_product(frequency, t)
-    sine, cosine, half = (
-        np.sin(2 * np.pi * turn),
-        np.cos(2 * np.pi * turn),
-        np.sin(np.pi * turn) ** 2,
+    _, rest = fall_and_lag(t, tau)
+    slow = (frequency * t < 1 / 8) & (u < 1)
+    small = np.where(slow, angle, 0.0)
+    to_sine = np.where(
+        slow,
+        across * (excess(np.minimum(u, 1.0)) + bend) - direct * excess_over_sine(small),
+        direct * sine + across * (bend - rest),
     )
-    fall, rest = fall_and_lag(t, tau)
-    angle = np.minimum(2 * np.pi * frequency * t, _FAST)
-    early = w * (excess(np.minimum(u, 1.0)) + 2 * half) - np.where(
-        angle < 1, excess_over_sine(np.minimum(angle, 1.0)), angle - sine
-    )
-    to_sine = np.where(u < 1, early, sine - w * cosine + w * fall)
-    to_cosine = np.where(u < 1, rest - 2 * half + w * sine, cosine + w * sine - fall)
+    to_cosine = direct * (rest - bend) + across * sine
     turned = np.fmod(phase, 360.0)
-    result: Array = (cosdg(turned) * to_sine + sindg(turned) * to_cosine) / (1 + w * w)
+    result: Array = cosdg(turned) * to_sine + sindg(turned) * to_cosine
     return result
 
 
 def decay_share(t: Any, tau: Any, source_tau: Any) -> Array:
     """Response from rest to exp(-t / source_tau); source_tau may equal tau."""
-    u = t / tau
+    u, v = t / tau, t / source_tau
     apart = np.abs(source_tau - tau)
-    least = np.exp(-np.minimum(u, t / source_tau))
-    far = lag(u * (apart / source_tau)) * (source_tau / np.where(apart > 0, apart, 1.0))
-    result: Array = least * np.where(apart > 0, far, np.minimum(u, 1e3))
+    # |u - v| from the difference of the time constants, which is exact where they are close
+    between = np.maximum(u, v) * (apart / np.maximum(source_tau, tau))
+    far = lag(between) * (source_tau / np.where(apart > 0, apart, 1.0))
+    result: Array = np.exp(-np.minimum(u, v)) * np.where(apart > 0, far, np.minimum(u, 1e3))
     return result
 
 
 def pulse_shares(t: Any, tau: Any, duration: Any, delay: Any) -> tuple[Array, Array]:
     """Shares of the resting level and of the pulse's level."""
-    since = np.maximum(t - delay, 0.0)
-    ended = np.maximum(since - duration, 0.0)
+    since, rounded_off = two_sum(t, -delay)
+    past = (since - duration) + rounded_off
+    over = past >= 0
+    since, ended = np.maximum(since, 0.0), np.maximum(past, 0.0)
     before = lag(np.minimum(t, delay) / tau)
     fall_since, lag_since = fall_and_lag(since, tau)
     fall_ended, lag_ended = fall_and_lag(ended, tau)
-    over = since >= duration
     pulse = np.where(over, fall_ended * lag(duration / tau), lag_since)
     resting = np.where(over, lag_ended, 0.0) + fall_since * before
     return resting, pulse
@@ -116,18 +125,26 @@ def square_shares(t: Any, tau: Any, period: Any, duty: Any) -> tuple[Array, Arra
     The periods that are over are summed as a geometric series.
     """
     inside = np.fmod(t, period)
-    on, off = duty * period, (1 - duty) * period
-    over = (t - inside) / tau
+    on, on_rest = _exact_product(duty, period)
+    off = (1 - duty) * period
     length = period / tau
-    periods = np.where(length > 0, lag(over) / np.where(length > 0, lag(length), 1.0), 0.0)
-    tiny = (length > 0) & (lag(length) == 0)
-    periods = np.where(tiny | (length == 0), (t - inside) / period, periods)
+    still = length < _STILL
+    whole = lag(np.where(still, 1.0, length))
+    per_high = np.where(still, duty, lag(on / tau) / whole)
+    per_low = np.where(still, 1 - duty, lag(off / tau) / whole)
     fall_inside, lag_inside = fall_and_lag(inside, tau)
-    past_on = np.maximum(inside - on, 0.0)
-    fall_past, lag_past = fall_and_lag(past_on, tau)
-    is_low = inside >= on
+    # what the periods that are over have left
+    left = fall_inside * lag((t - inside) / tau)
+    past = (inside - on) - on_rest
+    is_low = past >= 0
+    fall_past, lag_past = fall_and_lag(np.maximum(past, 0.0), tau)
     high_now = np.where(is_low, fall_past * lag(on / tau), lag_inside)
     low_now = np.where(is_low, lag_past, 0.0)
-    high = fall_inside * np.exp(-off / tau) * lag(on / tau) * periods + high_now
-    low = fall_inside * lag(off / tau) * periods + low_now
-    return low, high
+    return left * per_low + low_now, left * np.exp(-off / tau) * per_high + high_now
+
+
+def _exact_product(share: Any, number: Any) -> tuple[Any, Any]:
+    """share x number and its rounding error, for a share up to 1 and any number."""
+    digits, exponent = np.frexp(number)
+    product, rest = two_product(share, digits)
+    return np.ldexp(product, exponent), np.ldexp(rest, exponent)

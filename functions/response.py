@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable
+from functools import reduce
 from typing import Any
 
 import numpy as np
@@ -26,7 +27,7 @@ from tausheet.functions.from_rest import (
     square_shares,
 )
 
-_BLOCK = 8192
+_BLOCK = 32768
 """Elements worked on at a time, so that what lies between stays in the processor's cache."""
 
 
@@ -56,14 +57,12 @@ def _step_scalar(
         and math.isfinite(final)
     ):
         return None
-    if t <= delay:
-        return initial
-    u = (t - delay) / tau
-    if u < 0.5:
-        rest = -math.expm1(-u)
-        return initial * (1.0 - rest) + final * rest
-    fall = math.exp(-u)
-    return initial * fall + final * (1.0 - fall)
+    u, fall = (delay - t) / tau, initial - final
+    if math.isinf(fall):
+        return None
+    if u > -0.5:
+        return initial + fall * math.expm1(min(u, 0.0))
+    return final + fall * math.exp(u)
 
 
 def _natural_scalar(t: float, tau: float, initial: float) -> float | None:
@@ -127,8 +126,22 @@ def step(
 
 
 def _step(t: Array, tau: Array, initial: Array, final: Array, delay: Array) -> Array:
-    fall, rest = fall_and_lag(np.maximum(t - delay, 0.0), tau)
-    return initial * fall + final * rest
+    fall = initial - final
+    if np.isinf(fall).any():
+        return 2 * _step(t, tau, initial / 2, final / 2, delay)
+    u = (delay - t) / tau
+    late: Array = final + fall * np.exp(u)
+    early = u > -0.5
+    if not early.any():
+        return late
+    return np.where(early, initial + fall * np.expm1(np.minimum(u, 0.0)), late)
+
+
+def _blend(*levels_and_shares: tuple[Array, Array]) -> Array:
+    """Levels times shares that add up to 1: never outside the levels, though shares are rounded."""
+    levels = [level for level, _ in levels_and_shares]
+    total = sum(level * share for level, share in levels_and_shares)
+    return np.clip(total, reduce(np.minimum, levels), reduce(np.maximum, levels))
 
 
 @cell_function("FO_RAMP", "Response")
@@ -170,8 +183,7 @@ def ramp(
 def _ramp(t: Array, tau: Array, initial: Array, start: Array, end: Array, length: Array) -> Array:
     t = np.maximum(t, 0.0)
     of_start, of_end = ramp_shares(t, tau, length)
-    result: Array = initial * np.exp(-t / tau) + start * of_start + end * of_end
-    return result
+    return _blend((initial, np.exp(-t / tau)), (start, of_start), (end, of_end))
 
 
 @cell_function("FO_SINE", "Response")
@@ -223,10 +235,8 @@ def _sine(
 ) -> Array:
     t = np.maximum(t, 0.0)
     fall, rest = fall_and_lag(t, tau)
-    result: Array = (
-        initial * fall + offset * rest + amplitude * sine_share(t, tau, frequency, phase)
-    )
-    return result
+    swing = amplitude * sine_share(t, tau, frequency, phase)
+    return _blend((initial, fall), (offset, rest)) + swing
 
 
 @cell_function("FO_DECAY", "Response")
@@ -270,8 +280,8 @@ def _decay(
 ) -> Array:
     t = np.maximum(t, 0.0)
     fall, rest = fall_and_lag(t, tau)
-    result: Array = initial * fall + offset * rest + amplitude * decay_share(t, tau, source_tau)
-    return result
+    share = decay_share(t, tau, source_tau)
+    return _blend((initial, fall), (offset, rest)) + amplitude * share
 
 
 @cell_function("FO_PULSE", "Response")
@@ -323,8 +333,7 @@ def _pulse(
 ) -> Array:
     t = np.maximum(t, 0.0)
     of_resting, of_level = pulse_shares(t, tau, duration, delay)
-    result: Array = initial * np.exp(-t / tau) + resting * of_resting + level * of_level
-    return result
+    return _blend((initial, np.exp(-t / tau)), (resting, of_resting), (level, of_level))
 
 
 @cell_function("FO_SQUARE", "Response")
@@ -370,5 +379,4 @@ def _square(
 ) -> Array:
     t = np.maximum(t, 0.0)
     of_low, of_high = square_shares(t, tau, period, duty)
-    result: Array = initial * np.exp(-t / tau) + low * of_low + high * of_high
-    return result
+    return _blend((initial, np.exp(-t / tau)), (low, of_low), (high, of_high))

@@ -219,8 +219,12 @@ def test_the_edges_of_the_domain() -> None:
     assert fo.square(5.0, 1.0, 2.0, -1.0, 5.0, 1.0, 1.0) == pytest.approx(
         fo.step(5.0, 1.0, 2.0, 5.0), rel=1e-14
     )
-    assert fo.ramp(2.0, 1.0, 1.0, 7.0, 3.0, 0.0) == fo.step(2.0, 1.0, 1.0, 3.0)
-    assert fo.pulse(2.0, 1.0, 1.0, 3.0, 9.0, 0.0) == fo.step(2.0, 1.0, 1.0, 3.0)
+    assert fo.ramp(2.0, 1.0, 1.0, 7.0, 3.0, 0.0) == pytest.approx(
+        fo.step(2.0, 1.0, 1.0, 3.0), rel=1e-15
+    )
+    assert fo.pulse(2.0, 1.0, 1.0, 3.0, 9.0, 0.0) == pytest.approx(
+        fo.step(2.0, 1.0, 1.0, 3.0), rel=1e-15
+    )
     assert fo.sine(2.0, 1.0, 1.0, 5.0, 0.0, 90.0, 2.0) == pytest.approx(
         fo.step(2.0, 1.0, 1.0, 7.0), rel=1e-15
     )
