@@ -37,19 +37,11 @@ PAGE_POINTS = 708.0
 
 MARGINS = {"left": 0.55, "right": 0.55, "top": 0.5, "bottom": 0.5, "header": 0.25, "footer": 0.25}
 
-READABLE = "[>=99950]0.00E+00;[>=99.95]0.0;0.000"
-"""Four or five digits for a result in the unit in which it reads well."""
-PLAIN = "General"
-RELATIVE = '[<-99.995]"< -9999 %";0.0%'
+RELATIVE = '[<-99.995]"< -9999 %";[<0]-0.0%;0.0%'
+"""A share. Calc drops the sign of a number that falls into a section after a condition."""
 TINY = "0.0E+00;-0.0E+00;0"
-
-
-def in_full(quantity: str, unit: str = "") -> str:
-    """The format of a base SI number with more digits than the result beside it shows."""
-    mark = f'" {unit}"' if unit else ""
-    power, plain = f"0.000000E+00{mark}", f"0.000000{mark}"
-    usual = f"[<100000]{plain};{power}"
-    return usual if quantity == "temperature" else f"[<0.001]{power};{usual}"
+DIGITS = 4
+"""Significant digits of a result in the unit in which it reads well."""
 
 
 @cache

@@ -18,7 +18,7 @@ HEAD = (
     ("B", "description; equation", "left"),
     ("C", "result", "right"),
     ("D", " unit", "left"),
-    ("E:F", "second way", "right"),
+    ("E:F", "second way, in base SI", "right"),
     ("G", "difference", "right"),
     ("H", "in base SI", "right"),
 )
@@ -55,10 +55,7 @@ def _quantity(page: Page, book: Book, quantity: Quantity) -> None:
     symbol = quantity.symbol
     page.text(row, "A", symbol, style.font(9, bold=True))
     page.text(row, "B", quantity.description, style.font(8.5, bold=principal), wrap=True)
-    exact = page.text(row, "H", f"={quantity.formula}", style.font(8, colour=style.QUIET), "right")
-    exact.number_format = (
-        style.PLAIN if quantity.quantity == COUNT else style.in_full(quantity.quantity)
-    )
+    page.text(row, "H", f"={quantity.formula}", style.font(8, colour=style.QUIET), "right")
     book.define(symbol, page.worksheet, f"H{row}")
     _shown(page, row, "C", "D", symbol, quantity.quantity, style.font(9.5, bold=principal))
     if principal:
@@ -81,15 +78,15 @@ def _shown(
     cell = page.text(row, number, None, font, "right")
     if quantity == COUNT:
         cell.value = f'=IF(ISNUMBER({name}),{name},"no result")'
-        cell.number_format = style.PLAIN
         page.text(row, unit, "-", style.font(9, colour=style.QUIET), indent=1)
         return
     place = place_of(name, quantity)
-    cell.value = (
-        f"=IF(ISNUMBER({name}),{name}*INDEX({table_name('shown_under', quantity)},{place})"
-        f'/INDEX({table_name("shown_over", quantity)},{place}),"no result")'
+    under, over = (
+        f"INDEX({table_name(column, quantity)},{place})" for column in ("shown_under", "shown_over")
     )
-    cell.number_format = style.READABLE
+    value = f"{name}*{under}/{over}"
+    rounded = f"ROUND({value},{style.DIGITS - 1}-INT(LOG10(ABS({value}))))"
+    cell.value = f'=IF(ISNUMBER({name}),IF({name}=0,0,{rounded}),"no result")'
     page.text(
         row,
         unit,
@@ -106,11 +103,9 @@ def place_of(name: str, quantity: str) -> str:
 
 
 def _second(page: Page, book: Book, quantity: Quantity, row: int) -> None:
-    """The second way, in the base unit in full, and how far it is from the first."""
+    """The second way, in full, and how far it is from the first."""
     symbol = quantity.symbol
-    second = page.text(row, "E:F", f"={quantity.second}", style.font(8), "right")
-    unit = shown_unit(base_unit(quantity.quantity)) if quantity.quantity != COUNT else ""
-    second.number_format = style.in_full(quantity.quantity, unit)
+    page.text(row, "E:F", f"={quantity.second}", style.font(8), "right")
     book.define(f"{symbol}_hand", page.worksheet, f"E{row}")
     difference = page.text(
         row,

@@ -252,3 +252,16 @@ def test_lines_needed() -> None:
 def test_passes_rounds_the_ratio_only() -> None:
     check = Check("a", "a", "x", "y", COUNT, "")
     assert "ROUND((x)/(y),12)<=1" in writer_checks.passes(check)
+
+
+def test_negative_results_show_their_sign(tmp_path: Path) -> None:
+    """Calc drops a sign that a conditional number format does not spell out."""
+    negative = Quantity("V_low", "x", "-12.3456", "voltage", "x", "-12.3456")
+    sheet = with_quantity(negative)
+    workbook = writer.build(sheet, {}, demo=True)
+    title, cells = next(iter(workbook.defined_names["V_low"].destinations))
+    row = cells.replace("$", "").split(":")[0][1:]
+    assert workbook[title][f"C{row}"].number_format == "General"
+    values = embedded.Book(workbook).values()[title]
+    assert (values[f"C{row}"], values[f"D{row}"]) == (-12.35, "V")
+    assert style.RELATIVE.split(";")[1] == "[<0]-0.0%"
