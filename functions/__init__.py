@@ -11,6 +11,8 @@ from tausheet.functions.energy import (
 from tausheet.functions.fault import dc_offset, dc_worst, fault_current, fault_i2t, peak_factor
 from tausheet.functions.fit import Fit, FitFrom, fit, fit_from
 from tausheet.functions.frequency import corner_frequency, gain_db, noise_bandwidth, phase, tau_at
+from tausheet.functions.network import Equivalent, FirstOrder, equivalent, network
+from tausheet.functions.network_response import network_at
 from tausheet.functions.overload import trip_time
 from tausheet.functions.parts import preferred, rkm, rkm_text
 from tausheet.functions.periodic import Ripple, ripple
@@ -36,6 +38,8 @@ from tausheet.functions.tolerance import corners, draw
 from tausheet.functions.units import in_unit, si, text
 
 __all__ = [
+    "Equivalent",
+    "FirstOrder",
     "Fit",
     "FitFrom",
     "Ripple",
@@ -49,6 +53,7 @@ __all__ = [
     "draw",
     "energy_c",
     "energy_l",
+    "equivalent",
     "fault_current",
     "fault_i2t",
     "fit",
@@ -57,6 +62,8 @@ __all__ = [
     "i2t",
     "in_unit",
     "natural",
+    "network",
+    "network_at",
     "noise_bandwidth",
     "parallel",
     "peak_factor",
