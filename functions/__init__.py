@@ -1,5 +1,6 @@
 """The arithmetic of tausheet: plain array functions that are also cell functions."""
 
+from tausheet.functions.crossing import crossing, stays_within
 from tausheet.functions.energy import (
     c_for_energy,
     dissipated,
@@ -8,6 +9,7 @@ from tausheet.functions.energy import (
     i2t,
     ride_through,
 )
+from tausheet.functions.extremes import Peak, peak
 from tausheet.functions.fault import dc_offset, dc_worst, fault_current, fault_i2t, peak_factor
 from tausheet.functions.fit import Fit, FitFrom, fit, fit_from
 from tausheet.functions.frequency import corner_frequency, gain_db, noise_bandwidth, phase, tau_at
@@ -19,6 +21,7 @@ from tausheet.functions.periodic import Ripple, ripple
 from tausheet.functions.response import decay, natural, pulse, ramp, sine, square, step
 from tausheet.functions.service import reason, version
 from tausheet.functions.sources import rate, superpose
+from tausheet.functions.stages import stages
 from tausheet.functions.step_times import (
     rise_time,
     settling_time,
@@ -26,6 +29,7 @@ from tausheet.functions.step_times import (
     time_until_above,
     time_until_below,
 )
+from tausheet.functions.table import table
 from tausheet.functions.time_constants import (
     parallel,
     resistance_at,
@@ -42,12 +46,14 @@ __all__ = [
     "FirstOrder",
     "Fit",
     "FitFrom",
+    "Peak",
     "Ripple",
     "c_for_energy",
     "corner_frequency",
     "corners",
     "dc_offset",
     "dc_worst",
+    "crossing",
     "decay",
     "dissipated",
     "draw",
@@ -66,6 +72,7 @@ __all__ = [
     "network_at",
     "noise_bandwidth",
     "parallel",
+    "peak",
     "peak_factor",
     "phase",
     "preferred",
@@ -83,8 +90,11 @@ __all__ = [
     "si",
     "sine",
     "square",
+    "stages",
+    "stays_within",
     "step",
     "superpose",
+    "table",
     "tau_at",
     "tau_for",
     "tau_rc",

@@ -1,0 +1,422 @@
+"""Where a first-order response passes a level, told apart without sampling.
+
+On one stretch of time tau h' + h = g, h = y - level and g = forcing - level. While g keeps its
+sign, h exp(s / tau) is monotonic: between two zeros of g there is at most one zero of h. So the
+zeros of h are told apart by the zeros of g, and those by bounds of g and g' over whole windows.
+What is left is a list of marks: moments with the side on which y is, at most one passage between
+neighbours. Where doubles cannot tell the side, fifty digits do.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass, replace
+from decimal import Decimal, localcontext
+
+from tausheet.functions.digits import fifty_digits
+from tausheet.functions.errors import DomainError
+from tausheet.functions.exact import two_product
+
+_EPS = 2.0**-53
+_PAD = 16 * _EPS
+"""Share of the sum of magnitudes by which a value in doubles may be off."""
+
+_WINDOWS = 300_000
+"""Windows looked into on one stretch before a search is given up."""
+
+
+def _turns(frequency: float, s: float, phase: float) -> float:
+    """frequency s + phase less whole turns, however many."""
+    product, error = two_product(frequency, s)
+    return float((product - math.floor(product)) + error + phase)
+
+
+@dataclass(frozen=True)
+class Forcing:
+    """a + b s + c s^2 + sines (amplitude, frequency, phase in turns) + decays (amplitude, T)."""
+
+    a: float = 0.0
+    b: float = 0.0
+    c: float = 0.0
+    sines: tuple[tuple[float, float, float], ...] = ()
+    decays: tuple[tuple[float, float], ...] = ()
+
+    def __call__(self, s: float) -> float:
+        """The forcing after s."""
+        x = self.a + s * (self.b + s * self.c)
+        for amplitude, frequency, phase in self.sines:
+            x += amplitude * math.sin(math.tau * _turns(frequency, s, phase))
+        for amplitude, source_tau in self.decays:
+            x += amplitude * math.exp(-s / source_tau)
+        return x
+
+    def bounds(self, left: float, right: float) -> tuple[float, float]:
+        """Numbers that the forcing stays between from left to right."""
+        low, high = self.slow_bounds(left, right)
+        size = 0.0
+        for amplitude, frequency, phase in self.sines:
+            down, up = _sine_bounds(_turns(frequency, left, phase), frequency * (right - left))
+            low += min(amplitude * down, amplitude * up)
+            high += max(amplitude * down, amplitude * up)
+            size += abs(amplitude)
+        return low - _PAD * size, high + _PAD * size
+
+    def slow_bounds(self, left: float, right: float) -> tuple[float, float]:
+        """The same without the sines."""
+        ends = [s * (self.b + s * self.c) for s in (left, right)]
+        size = right * (abs(self.b) + right * abs(self.c))
+        if self.c and left < (middle := -self.b / (2 * self.c)) < right:
+            ends.append(middle * self.b / 2)
+        low, high = min(ends), max(ends)
+        for amplitude, source_tau in self.decays:
+            first = amplitude * math.exp(-left / source_tau)
+            last = amplitude * math.exp(-right / source_tau)
+            low, high = low + min(first, last), high + max(first, last)
+            size += abs(first) * (1 + left / source_tau)
+        if size:
+            size += abs(self.a)
+        return self.a + low - _PAD * size, self.a + high + _PAD * size
+
+    def slope(self) -> Forcing:
+        """The forcing's rate of change."""
+        return Forcing(
+            self.b,
+            2 * self.c,
+            0.0,
+            tuple((a * math.tau * f, f, phase + 0.25) for a, f, phase in self.sines),
+            tuple((-a / source_tau, source_tau) for a, source_tau in self.decays),
+        )
+
+    def scaled(self, k: float) -> Forcing:
+        """The forcing times k."""
+        return Forcing(
+            k * self.a,
+            k * self.b,
+            k * self.c,
+            tuple((k * a, f, phase) for a, f, phase in self.sines),
+            tuple((k * a, source_tau) for a, source_tau in self.decays),
+        )
+
+
+def _sine_bounds(start: float, turned: float) -> tuple[float, float]:
+    """Bounds of the sine while it turns from `start`, in turns."""
+    if not turned < 1:
+        return -1.0, 1.0
+    start -= math.floor(start)
+    end = start + turned
+    first, last = math.sin(math.tau * start), math.sin(math.tau * end)
+    high = 1.0 if start <= 0.25 <= end or end >= 1.25 else max(first, last)
+    low = -1.0 if start <= 0.75 <= end or end >= 1.75 else min(first, last)
+    return low, high
+
+
+@dataclass(frozen=True)
+class Path:
+    """A stretch on which tau y' + y = forcing; with tau infinite y' = forcing.
+
+    origin: its start, to all digits; levels: the parts of which forcing.a is the sum;
+    exact: y after s to fifty digits, None when there is nothing better than doubles;
+    start: y at s = 0, None when it goes on from the stretch before.
+    """
+
+    origin: Decimal
+    length: float
+    tau: float
+    forcing: Forcing
+    levels: tuple[float, ...]
+    exact: Callable[[Decimal], Decimal] | None = None
+    start: float | None = None
+
+    def moment(self, s: float | Decimal) -> float:
+        """The double next to the moment s after the start."""
+        with localcontext(prec=60):
+            return float(self.origin + Decimal(s))
+
+
+class Undecided(DomainError):
+    """More turning points lie before the moment asked for than can be told apart."""
+
+
+@dataclass(frozen=True)
+class Mark:
+    """A moment s and the side of the level there: -1, 0 or 1."""
+
+    s: float
+    side: int
+
+
+class Lag:
+    """h = y - level on a path: tau h' + h = g, h(0) = start, which may be off by error."""
+
+    def __init__(self, path: Path, level: float, start: float, error: float = 0.0) -> None:
+        g = replace(path.forcing, a=math.fsum((*path.levels, -level)))
+        if math.isinf(path.tau):
+            g = path.forcing
+        self.path, self.level = path, Decimal(level)
+        self.g, self.slope, self.tau = g, g.slope(), path.tau
+        self.start, self.error = start, error + _PAD * abs(start)
+        self._sines = [self._settled(*sine) for sine in g.sines]
+        self._ripple = sum(math.hypot(p, q) for _, _, p, q, _ in self._sines)
+
+    def _settled(self, a: float, f: float, phase: float) -> tuple[float, ...]:
+        """frequency, phase, and the settled response p sin + q cos with its value at s = 0."""
+        k = math.tau * f * self.tau
+        if math.isinf(self.tau):
+            p, q = 0.0, -a / (math.tau * f)
+        elif k < 1e150:
+            p, q = a / (1 + k * k), -a * k / (1 + k * k)
+        else:
+            p, q = 0.0, -a / k
+        angle = math.tau * phase
+        return f, phase, p, q, p * math.sin(angle) + q * math.cos(angle)
+
+    def _ripples(self, s: float) -> list[float]:
+        settled = []
+        for f, phase, p, q, _ in self._sines:
+            angle = math.tau * _turns(f, s, phase)
+            settled.append(p * math.sin(angle) + q * math.cos(angle))
+        return settled
+
+    def at(self, s: float) -> tuple[float, float, float]:
+        """h, how far it may be off, and the settled ripple in it, after s."""
+        g = self.g
+        if math.isinf(self.tau):
+            fall, step = 1.0, s
+            slope, bow = s * s / 2, s * s * s / 3
+        else:
+            u = s / self.tau
+            fall, step = math.exp(-u), -math.expm1(-u)
+            slope = self.tau * (u - step)
+            bow = self.tau * self.tau * (u * u - 2 * (u - step))
+        terms = [self.start * fall, g.a * step, g.b * slope, g.c * bow]
+        size = sum(map(abs, terms)) + abs(g.b) * s * min(1.0, step) + abs(g.c) * s * s
+        size += abs(terms[0]) * s / self.tau
+        ripples = self._ripples(s)
+        for (*_, p, q, first), ripple in zip(self._sines, ripples, strict=True):
+            terms.append(ripple)
+            terms.append(-first * fall)
+            size += 4 * (abs(p) + abs(q))
+        for amplitude, source_tau in g.decays:
+            term, rough = self._decayed(amplitude, source_tau, s, fall)
+            terms.append(term)
+            size += rough
+        return math.fsum(terms), _PAD * size + self.error * fall, math.fsum(ripples)
+
+    def _decayed(self, a: float, source_tau: float, s: float, fall: float) -> tuple[float, float]:
+        """Response to a decay, and the size of what was added up for it."""
+        own = math.exp(-s / source_tau)
+        if math.isinf(self.tau):
+            term = -a * source_tau * math.expm1(-s / source_tau)
+            return term, abs(term)
+        x = s * ((source_tau - self.tau) / source_tau / self.tau)
+        if abs(x) < 1:
+            term = a * s / self.tau * fall * (math.expm1(x) / x if x else 1.0)
+            return term, abs(term) * (1 + s / self.tau)
+        share = a * (source_tau / (source_tau - self.tau))
+        size = abs(share) * (own * (1 + s / source_tau) + fall * (1 + s / self.tau))
+        return share * (own - fall), size
+
+    @fifty_digits
+    def side(self, s: float) -> int:
+        """Which side of the level y is on after s."""
+        h, error, _ = self.at(s)
+        if not abs(h) <= error:
+            return 1 if h > 0 else -1
+        if self.path.exact is None:
+            return 0
+        digits = self.path.exact(Decimal(s)) - self.level
+        if abs(digits) <= Decimal(error) * _NOTHING:
+            return 0
+        return 1 if digits > 0 else -1
+
+    def marks(self, left: float, right: float) -> Iterator[Mark]:
+        """Marks from left to right, at most one zero of h between neighbours."""
+        yield Mark(left, self.side(left))
+        stack = [(left, right)]
+        looked = 0
+        while stack:
+            left, right = stack.pop()
+            looked += 1
+            if looked > _WINDOWS:
+                raise Undecided(_TOO_MANY)
+            clear = self._clear(left, right)
+            if clear:
+                yield Mark(right, clear)
+                continue
+            if not self.one_sided(self.g, left, right):
+                if not self.one_sided(self.slope, left, right):
+                    middle = left + (right - left) / 2
+                    if left < middle < right and right - left > 4 * _EPS * right:
+                        stack += [(middle, right), (left, middle)]
+                        continue
+                elif (turn := self._turn(left, right)) is not None:
+                    yield Mark(turn, self.side(turn))
+            yield Mark(right, self.side(right))
+
+    def turns(self, left: float, right: float) -> list[float]:
+        """Zeros of g from left to right, and moments too close to one to tell."""
+        found: list[float] = []
+        stack = [(left, right)]
+        for _ in range(_WINDOWS):
+            if not stack:
+                return found
+            left, right = stack.pop()
+            if self.one_sided(self.g, left, right):
+                continue
+            if self.one_sided(self.slope, left, right):
+                turn = self._turn(left, right)
+                found += [] if turn is None else [turn]
+                continue
+            middle = left + (right - left) / 2
+            if right - left > 4 * _EPS * right:
+                stack += [(middle, right), (left, middle)]
+            else:
+                found.append(middle)
+        raise Undecided(_TOO_MANY)
+
+    @staticmethod
+    def one_sided(forcing: Forcing, left: float, right: float) -> bool:
+        """Whether a forcing provably keeps its sign from left to right."""
+        low, high = forcing.bounds(left, right)
+        return low >= 0 or high <= 0
+
+    def _clear(self, left: float, right: float) -> int:
+        """The side on which y provably stays all the way from left to right; 0 when unknown."""
+        low, high = self.reach(left, right)
+        return (low > 0) - (high < 0)
+
+    def reach(self, left: float, right: float) -> tuple[float, float]:
+        """Numbers that h stays between from left to right."""
+        h, error, ripple = self.at(left)
+        fall, step = self._weights(right - left)
+        low, high = -math.inf, math.inf
+        for value, (least, most), margin in (
+            (h, self.g.bounds(left, right), error),
+            (h - ripple, self.g.slow_bounds(left, right), error + self._ripple * (1 + _PAD)),
+        ):
+            down, up = value * fall + least * step, value * fall + most * step
+            margin += _PAD * (abs(value) + max(abs(least), abs(most)) * step)
+            low = max(low, min(value, down) - margin)
+            high = min(high, max(value, up) + margin)
+            if not self._sines:
+                break
+        return low, high
+
+    def _weights(self, width: float) -> tuple[float, float]:
+        """What is left of h after a width, and what a constant g adds."""
+        if math.isinf(self.tau):
+            return 1.0, width
+        return math.exp(-width / self.tau), -math.expm1(-width / self.tau)
+
+    def _turn(self, left: float, right: float) -> float | None:
+        """The zero of a monotonic g between left and right."""
+        first, last = self.g(left), self.g(right)
+        if (first < 0) == (last < 0):
+            return None
+        while True:
+            middle = left + (right - left) / 2
+            if not left < middle < right:
+                return right
+            if (self.g(middle) < 0) == (first < 0):
+                left = middle
+            else:
+                right = middle
+
+    def root(self, left: float, right: float, side: int) -> Decimal:
+        """The one zero of h between marks that lie on different sides; `side` is left's."""
+        s = left + (right - left) / 2
+        a, b = left, right
+        for turn in range(200):
+            h, error, _ = self.at(s)
+            guess = s + self._step(h, self.g(s))
+            if abs(h) <= error:
+                s = guess if a < guess < b else s
+                break
+            if (h > 0) == (side > 0):
+                a = s
+            else:
+                b = s
+            if not a < guess < b or turn % 4 == 3:
+                guess = a + (b - a) / 2
+            if not a < guess < b:
+                break
+            s = guess
+        return self._polished(s, Decimal(left), Decimal(right), side)
+
+    def _step(self, h: float, g: float) -> float:
+        """From where y is to the level, were the forcing constant."""
+        if g == 0:
+            return math.nan
+        ratio = -h / g
+        if math.isinf(self.tau):
+            return ratio
+        return self.tau * math.log1p(ratio) if ratio > -1 else math.nan
+
+    @fifty_digits
+    def _polished(self, s: float, a: Decimal, b: Decimal, side: int) -> Decimal:
+        """The zero to about twenty digits, from a good guess between a and b."""
+        x = Decimal(s)
+        exact = self.path.exact
+        if exact is None:
+            return x
+        for _ in range(200):
+            h = exact(x) - self.level
+            if (h > 0) == (side > 0) and h:
+                a = x
+            else:
+                b = x
+            step = Decimal(self._step(float(h), self.g(float(x))))
+            guess = x + step if step.is_finite() else a
+            if not a < guess < b:
+                guess = (a + b) / 2
+            if not h or abs(guess - x) <= abs(guess) * _FINE:
+                return guess if h else x
+            x = guess
+        return x
+
+    def settles(self) -> float | None:
+        """A moment behind which h keeps its side for ever; None when a sine keeps it moving."""
+        longest = max([0.0 if math.isinf(self.tau) else self.tau, *(t for _, t in self.g.decays)])
+        line = self._settled_line()
+        first = abs(self.start) + abs(line[0]) + self._ripple
+        if not any(line[1:]) and abs(line[0]) <= self._ripple * (1 + _PAD):
+            return None if self._ripple else 750 * longest
+        s = longest or 1.0
+        while True:
+            value = slope = 0.0
+            for power in (3, 2, 1, 0):
+                slope = slope * s + value
+                value = value * s + line[power]
+            left = self._left(s, first)
+            away = value * slope >= 0 and all(value * part >= 0 for part in line[2:])
+            if away and abs(value) > (self._ripple + left) * (1 + _PAD) + _PAD * abs(line[0]):
+                return s
+            s *= 2
+
+    def _settled_line(self) -> tuple[float, float, float, float]:
+        """What h settles to apart from the ripple: coefficients of 1, s, s^2, s^3."""
+        g, tau = self.g, self.tau
+        if math.isinf(tau):
+            ripple = math.fsum(first for *_, first in self._sines)
+            charge = math.fsum(a * source_tau for a, source_tau in g.decays)
+            return self.start - ripple + charge, g.a, g.b / 2, g.c / 3
+        return g.a - tau * (g.b - 2 * g.c * tau), g.b - 2 * g.c * tau, g.c, 0.0
+
+    def _left(self, s: float, first: float) -> float:
+        """Bound of what is still to die away after s."""
+        if math.isinf(self.tau):
+            return sum(abs(a) * t * math.exp(-s / t) for a, t in self.g.decays)
+        left = first * math.exp(-s / self.tau)
+        for a, source_tau in self.g.decays:
+            left += abs(a) * (s / self.tau) * math.exp(-s / max(source_tau, self.tau))
+        return left
+
+
+_NOTHING = Decimal("1e-24")
+"""Share of a double's uncertainty that fifty digits count as 0."""
+_FINE = Decimal("1e-20")
+_TOO_MANY = (
+    "the moment asked for lies behind more turning points than can be told apart; "
+    "enter a later after or a smaller count"
+)
