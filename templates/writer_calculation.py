@@ -18,9 +18,9 @@ HEAD = (
     ("B", "description; equation", "left"),
     ("C", "result", "right"),
     ("D", " unit", "left"),
-    ("E:F", "second way, in base SI", "right"),
-    ("G", "difference", "right"),
-    ("H", "in base SI", "right"),
+    ("E:F", "in base SI", "right"),
+    ("G", "second way", "right"),
+    ("H", "difference", "center"),
 )
 NO_REASON = "no result: an input that it needs is missing or at fault"
 
@@ -55,8 +55,8 @@ def _quantity(page: Page, book: Book, quantity: Quantity) -> None:
     symbol = quantity.symbol
     page.text(row, "A", symbol, style.font(9, bold=True))
     page.text(row, "B", quantity.description, style.font(8.5, bold=principal), wrap=True)
-    page.text(row, "H", f"={quantity.formula}", style.font(8, colour=style.QUIET), "right")
-    book.define(symbol, page.worksheet, f"H{row}")
+    page.text(row, "E:F", f"={quantity.formula}", style.font(8), "right", indent=1)
+    book.define(symbol, page.worksheet, f"E{row}")
     _shown(page, row, "C", "D", symbol, quantity.quantity, style.font(9.5, bold=principal))
     if principal:
         _second(page, book, quantity, row)
@@ -105,18 +105,18 @@ def place_of(name: str, quantity: str) -> str:
 def _second(page: Page, book: Book, quantity: Quantity, row: int) -> None:
     """The second way, in full, and how far it is from the first."""
     symbol = quantity.symbol
-    page.text(row, "E:F", f"={quantity.second}", style.font(8), "right")
-    book.define(f"{symbol}_hand", page.worksheet, f"E{row}")
+    page.text(row, "G", f"={quantity.second}", style.font(8), "right")
+    book.define(f"{symbol}_hand", page.worksheet, f"G{row}")
     difference = page.text(
         row,
-        "G",
+        "H",
         f"=IF(AND(ISNUMBER({symbol}),ISNUMBER({symbol}_hand)),ABS({symbol}-{symbol}_hand)"
         f"/MAX(ABS({symbol}),ABS({symbol}_hand),1E-300),NA())",
         style.font(8, colour=style.QUIET),
-        "right",
+        "center",
     )
     difference.number_format = style.TINY
-    book.define(f"{symbol}_diff", page.worksheet, f"G{row}")
+    book.define(f"{symbol}_diff", page.worksheet, f"H{row}")
 
 
 def _words(quantity: Quantity) -> str:
