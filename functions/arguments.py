@@ -95,10 +95,12 @@ def is_range(raw: object) -> bool:
     return isinstance(raw, (list, tuple)) or (isinstance(raw, np.ndarray) and raw.ndim > 0)
 
 
-def grid(raw: Any) -> NDArray[Any]:
+def grid(raw: Any, copy: bool = True) -> NDArray[Any]:
     """A range as an array: float64 when every element is a plain number, else objects."""
     if isinstance(raw, np.ndarray):
-        return raw.astype(np.float64) if raw.dtype.kind in "fiub" else raw.astype(object)
+        if not raw.size:
+            raise InputError("a range must have at least one cell")
+        return raw.astype(np.float64 if raw.dtype.kind in "fiub" else object, copy=copy)
     rows = list(raw)
     nested = bool(rows) and all(is_range(row) for row in rows)
     if nested:
@@ -249,11 +251,13 @@ class Number(Spec):
                 return Argument(np.float64(self.safe), raw, _code(error), whole=True)
             return Argument(np.float64(value), raw, whole=True)
         try:
-            cells = grid(raw)
+            cells = grid(raw, copy=False)
         except CellError as error:
             return Argument(np.float64(self.safe), raw, _code(error))
         if cells.dtype == object:
             return self._convert_objects(cells, parameter)
+        if self._plainly_allowed(cells, parameter):
+            return Argument(cells, cells)
         ok = np.isfinite(cells)
         for bound, test in (
             (self.low, np.greater if self.low_open else np.greater_equal),
@@ -274,6 +278,15 @@ class Number(Spec):
             passed = nan & ((cells.view(np.uint64) & np.uint64(0xFFFF)) == kinds)
             codes[passed] = kinds[passed] | PASSED
         return Argument(np.where(ok, cells, self.safe), cells, codes)
+
+    def _plainly_allowed(self, cells: NDArray[np.float64], parameter: Parameter) -> bool:
+        """Whether a sum or the extremes alone show every number to be allowed."""
+        if self.whole or self._zero_refused(parameter):
+            return False
+        with np.errstate(all="ignore"):
+            if self.low == -math.inf and self.high == math.inf:
+                return math.isfinite(cells.sum())
+            return self.allows(float(cells.min())) and self.allows(float(cells.max()))
 
     def _convert_objects(self, cells: NDArray[Any], parameter: Parameter) -> Argument:
         values = np.full(cells.shape, self.safe, dtype=np.float64)

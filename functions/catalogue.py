@@ -203,6 +203,7 @@ class _Result:
     codes: NDArray[np.uint16] | None
     answer: Answer | None
 
+    @np.errstate(all="ignore")
     def value(self) -> Any:
         """The result; raises for single values, marks elements in arrays."""
         if self.shape == () and (sentence := self.error()) is not None:
@@ -243,9 +244,10 @@ class _Result:
 
     def _marked(self, array: NDArray[Any], codes: NDArray[np.uint16] | None) -> NDArray[Any]:
         array = np.asarray(array, dtype=np.float64)
-        bad = ~np.isfinite(array)
-        if codes is None and not bad.any():
-            return array if array.flags.writeable else array.copy()
+        # a finite sum has finite terms, and is had in less time than it takes to look at each
+        if codes is None and (np.isfinite(array.sum()) or np.isfinite(array).all()):
+            lent = any(np.may_share_memory(array, a.value) for a in self.arguments)
+            return array.copy() if lent or not array.flags.writeable else array
         marks = error_codes(array)
         if codes is not None:
             marks = np.where(codes != 0, codes & ~np.uint16(PASSED), marks)

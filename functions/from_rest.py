@@ -46,12 +46,15 @@ def fall_and_lag(t: Any, tau: Any) -> tuple[Array, Array]:
 
 def excess(u: Any) -> Array:
     """u - (1 - exp(-u)): tau times it is the response to a slope of 1 per second."""
-    small = np.minimum(u, 0.5)
-    series = np.ones_like(small)
+    result = np.asarray(u + np.expm1(-u))
+    small = u < 0.5
+    if not small.any():
+        return result
+    s = np.minimum(u, 0.5)
+    series = np.ones_like(s)
     for n in range(15, 2, -1):  # nested: u^2/2 (1 - u/3 (1 - u/4 (...)))
-        series = 1 - small / n * series
-    result: Array = np.where(u < 0.5, small * small / 2 * series, u + np.expm1(-u))
-    return result
+        series = 1 - s / n * series
+    return np.where(small, s * s / 2 * series, result)
 
 
 def ramp_shares(t: Any, tau: Any, duration: Any) -> tuple[Array, Array]:
@@ -63,7 +66,7 @@ def ramp_shares(t: Any, tau: Any, duration: Any) -> tuple[Array, Array]:
     left = np.where(duration > 0, (duration - inside) / duration, 0.0)
     early = u < 1
     mean = np.where(d > 0, lag(u) / d, 1.0)
-    end = np.where(early, np.where(d > 0, excess(u) / d, 0.0), part - mean)
+    end = np.where(early, np.where(d > 0, excess(np.minimum(u, 1.0)) / d, 0.0), part - mean)
     start = np.where(early, lag(u) - end, left + mean - np.exp(-u))
     after, held = fall_and_lag(np.maximum(t - duration, 0.0), tau)
     return start * after, end * after + held
@@ -82,12 +85,11 @@ def sine_share(t: Any, tau: Any, frequency: Any, phase: Any) -> Array:
     u = t / tau
     _, rest = fall_and_lag(t, tau)
     slow = (frequency * t < 1 / 8) & (u < 1)
-    small = np.where(slow, angle, 0.0)
-    to_sine = np.where(
-        slow,
-        across * (excess(np.minimum(u, 1.0)) + bend) - direct * excess_over_sine(small),
-        direct * sine + across * (bend - rest),
-    )
+    to_sine = direct * sine + across * (bend - rest)
+    if slow.any():
+        small = np.where(slow, angle, 0.0)
+        early = across * (excess(np.minimum(u, 1.0)) + bend) - direct * excess_over_sine(small)
+        to_sine = np.where(slow, early, to_sine)
     to_cosine = direct * (rest - bend) + across * sine
     turned = np.fmod(phase, 360.0)
     result: Array = cosdg(turned) * to_sine + sindg(turned) * to_cosine

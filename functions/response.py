@@ -31,18 +31,22 @@ _BLOCK = 32768
 """Elements worked on at a time, so that what lies between stays in the processor's cache."""
 
 
-def _in_blocks(compute: Callable[..., Array], *arguments: Any) -> Array:
-    """An element-wise computation, in blocks where its arguments are long columns."""
+def _in_blocks(compute: Callable[..., None], *arguments: Any) -> Array:
+    """An element-wise computation, in blocks where its arguments are long columns.
+
+    `compute` puts its result into its first argument.
+    """
     shape = np.broadcast_shapes(*(np.shape(a) for a in arguments))
-    size = math.prod(shape)
-    if size <= _BLOCK or any(np.shape(a) not in ((), shape) for a in arguments):
-        return compute(*arguments)
+    out = np.empty(shape)
+    if out.size <= _BLOCK or any(np.shape(a) not in ((), shape) for a in arguments):
+        compute(out, *arguments)
+        return out
+    whole = out.reshape(-1)
     flat = [np.asarray(a) if np.shape(a) == () else np.asarray(a).ravel() for a in arguments]
-    out = np.empty(size)
-    for start in range(0, size, _BLOCK):
+    for start in range(0, out.size, _BLOCK):
         part = slice(start, start + _BLOCK)
-        out[part] = compute(*(a if a.ndim == 0 else a[part] for a in flat))
-    return out.reshape(shape)
+        compute(whole[part], *(a if a.ndim == 0 else a[part] for a in flat))
+    return out
 
 
 def _step_scalar(
@@ -92,7 +96,14 @@ def natural(t: Finite, tau: Positive, initial: Finite) -> Numbers:
 
     References: closed form of tau dy/dt + y = 0.
     """
-    return _in_blocks(lambda t, tau, y0: y0 * np.exp(-np.maximum(t, 0.0) / tau), t, tau, initial)
+    return _in_blocks(_natural, t, tau, initial)
+
+
+def _natural(out: Array, t: Array, tau: Array, initial: Array) -> None:
+    np.maximum(t, 0.0, out=out)
+    np.divide(out, -tau, out=out)
+    np.exp(out, out=out)
+    np.multiply(out, initial, out=out)
 
 
 @cell_function("FO_STEP", "Response", scalar=_step_scalar)
@@ -122,19 +133,27 @@ def step(
 
     References: closed form of tau dy/dt + y = x.
     """
-    return _in_blocks(_step, t, tau, initial, final, delay)
+    return _step_response(t - delay if np.any(delay) else t, tau, initial, final)
 
 
-def _step(t: Array, tau: Array, initial: Array, final: Array, delay: Array) -> Array:
+def _step_response(t: Array, tau: Array, initial: Array, final: Array) -> Array:
     fall = initial - final
     if np.isinf(fall).any():
-        return 2 * _step(t, tau, initial / 2, final / 2, delay)
-    u = (delay - t) / tau
-    late: Array = final + fall * np.exp(u)
-    early = u > -0.5
-    if not early.any():
-        return late
-    return np.where(early, initial + fall * np.expm1(np.minimum(u, 0.0)), late)
+        return 2 * _step_response(t, tau, initial / 2, final / 2)
+    return _in_blocks(_step, t, -tau, initial, final, fall)
+
+
+def _step(out: Array, t: Array, less_tau: Array, initial: Array, final: Array, fall: Array) -> None:
+    np.divide(t, less_tau, out=out)
+    early = None
+    if out.max() > -0.5:
+        early = out > -0.5
+        soon = initial + fall * np.expm1(np.minimum(out, 0.0))
+    np.exp(out, out=out)
+    np.multiply(out, fall, out=out)
+    np.add(out, final, out=out)
+    if early is not None:
+        np.copyto(out, soon, where=early)
 
 
 def _blend(*levels_and_shares: tuple[Array, Array]) -> Array:
@@ -180,10 +199,12 @@ def ramp(
     return _in_blocks(_ramp, t, tau, initial, level_from, level_to, duration)
 
 
-def _ramp(t: Array, tau: Array, initial: Array, start: Array, end: Array, length: Array) -> Array:
+def _ramp(
+    out: Array, t: Array, tau: Array, initial: Array, start: Array, end: Array, length: Array
+) -> None:
     t = np.maximum(t, 0.0)
     of_start, of_end = ramp_shares(t, tau, length)
-    return _blend((initial, np.exp(-t / tau)), (start, of_start), (end, of_end))
+    out[...] = _blend((initial, np.exp(-t / tau)), (start, of_start), (end, of_end))
 
 
 @cell_function("FO_SINE", "Response")
@@ -225,6 +246,7 @@ def sine(
 
 
 def _sine(
+    out: Array,
     t: Array,
     tau: Array,
     initial: Array,
@@ -232,11 +254,11 @@ def _sine(
     frequency: Array,
     phase: Array,
     offset: Array,
-) -> Array:
+) -> None:
     t = np.maximum(t, 0.0)
     fall, rest = fall_and_lag(t, tau)
     swing = amplitude * sine_share(t, tau, frequency, phase)
-    return _blend((initial, fall), (offset, rest)) + swing
+    out[...] = _blend((initial, fall), (offset, rest)) + swing
 
 
 @cell_function("FO_DECAY", "Response")
@@ -276,12 +298,18 @@ def decay(
 
 
 def _decay(
-    t: Array, tau: Array, initial: Array, amplitude: Array, source_tau: Array, offset: Array
-) -> Array:
+    out: Array,
+    t: Array,
+    tau: Array,
+    initial: Array,
+    amplitude: Array,
+    source_tau: Array,
+    offset: Array,
+) -> None:
     t = np.maximum(t, 0.0)
     fall, rest = fall_and_lag(t, tau)
     share = decay_share(t, tau, source_tau)
-    return _blend((initial, fall), (offset, rest)) + amplitude * share
+    out[...] = _blend((initial, fall), (offset, rest)) + amplitude * share
 
 
 @cell_function("FO_PULSE", "Response")
@@ -323,6 +351,7 @@ def pulse(
 
 
 def _pulse(
+    out: Array,
     t: Array,
     tau: Array,
     initial: Array,
@@ -330,10 +359,10 @@ def _pulse(
     level: Array,
     duration: Array,
     delay: Array,
-) -> Array:
+) -> None:
     t = np.maximum(t, 0.0)
     of_resting, of_level = pulse_shares(t, tau, duration, delay)
-    return _blend((initial, np.exp(-t / tau)), (resting, of_resting), (level, of_level))
+    out[...] = _blend((initial, np.exp(-t / tau)), (resting, of_resting), (level, of_level))
 
 
 @cell_function("FO_SQUARE", "Response")
@@ -375,8 +404,15 @@ def square(
 
 
 def _square(
-    t: Array, tau: Array, initial: Array, low: Array, high: Array, period: Array, duty: Array
-) -> Array:
+    out: Array,
+    t: Array,
+    tau: Array,
+    initial: Array,
+    low: Array,
+    high: Array,
+    period: Array,
+    duty: Array,
+) -> None:
     t = np.maximum(t, 0.0)
     of_low, of_high = square_shares(t, tau, period, duty)
-    return _blend((initial, np.exp(-t / tau)), (low, of_low), (high, of_high))
+    out[...] = _blend((initial, np.exp(-t / tau)), (low, of_low), (high, of_high))
