@@ -258,7 +258,7 @@ def test_one_that_dies_twice_is_an_error(
     def die(book: Book) -> None:
         Started(calc).signal(signal.SIGKILL)
         deaths.append(book)
-        book._ask("values")
+        book._ask("values", None)
 
     monkeypatch.setattr(Book, "calculate", die)
     with pytest.raises(CalcError, match=r"crane link\.xlsx: LibreOffice ended in the middle"):

@@ -26,9 +26,9 @@ import json, sys, time, uno
 sys.path.insert(0, sys.argv[1])
 import helper
 
-def look(document):
+def look(office, document):
     return {
-        "values": {sheet.Name: helper.formula_values(sheet) for sheet in document.Sheets},
+        "values": office.read(document),
         "modified": document.isModified(),
         "undo": list(document.getUndoManager().getAllUndoActionTitles()),
         "names": list(document.NamedRanges.ElementNames),
@@ -43,7 +43,7 @@ for path in paths:
     how = helper.properties(Hidden=True, ReadOnly=path.endswith("readonly.xlsx"))
     url = uno.systemPathToFileUrl(path)
     document = office.desktop.loadComponentFromURL(url, "_blank", 0, how)
-    seen[path] = look(document)
+    seen[path] = look(office, document)
     document.close(True)
 office.end()
 print(json.dumps(seen))
@@ -61,7 +61,7 @@ while len(seen) < len(paths):
     for document in office.desktop.Components:
         path = uno.fileUrlToSystemPath(document.getURL())
         time.sleep(2)
-        seen[path] = look(document)
+        seen[path] = look(office, document)
 office.end()
 print(json.dumps(seen))
 """

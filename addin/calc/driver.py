@@ -131,12 +131,15 @@ class Book:
         """Compute every formula."""
         self._ask("calculate")
 
-    def values(self) -> Values:
-        """Compute everything; the value of every formula cell, by sheet and address."""
+    def values(self, titles: Sequence[str] | None = None) -> Values:
+        """Compute everything; the value of every formula cell, by sheet and address.
+
+        titles: the sheets to read, all when left out.
+        """
         self.calculate()
         return {
             title: {name: self._decoded(title, name, value) for name, value in cells.items()}
-            for title, cells in self._ask("values").items()
+            for title, cells in self._ask("values", titles).items()
         }
 
     def store(self, out: Path) -> None:

@@ -22,7 +22,7 @@ import time
 from typing import Any
 
 import uno
-from com.sun.star.beans import PropertyValue
+from com.sun.star.beans import NamedValue, PropertyValue
 
 START_LIMIT = 90.0
 END_LIMIT = 10.0
@@ -32,7 +32,7 @@ _FILTERS = {
     ".ods": "calc8",
     ".pdf": "calc_pdf_Export",
 }
-_FORMULA, _ERROR = 16, 4
+READER = "org.tausheet.Reader"
 
 
 class Refused(Exception):
@@ -116,9 +116,15 @@ class Office:
         """Compute every formula."""
         self.book(number).calculateAll()
 
-    def values(self, number: int) -> dict[str, dict[str, Any]]:
-        """The value of each formula cell."""
-        return {sheet.Name: formula_values(sheet) for sheet in self.book(number).Sheets}
+    def values(self, number: int, titles: list[str] | None) -> Any:
+        """The value of each formula cell, of every sheet or of those named."""
+        return self.read(self.book(number), titles)
+
+    def read(self, document: Any, titles: list[str] | None = None) -> Any:
+        """The value of each formula cell; our extension reads them inside LibreOffice."""
+        request = NamedValue("Document", document), NamedValue("Titles", tuple(titles or ()))
+        reader = self.context.ServiceManager.createInstanceWithContext(READER, self.context)
+        return json.loads(reader.execute(request))
 
     def store(self, number: int, path: str) -> None:
         """Write a workbook, or its printed form, by the ending of the name."""
@@ -177,40 +183,6 @@ def enter(cell: Any, value: Any) -> None:
         done = cell.getValue() == value
     if not done:
         raise Refused(f"cell {cell.AbsoluteName} cannot hold {value}")
-
-
-def formula_values(sheet: Any) -> dict[str, Any]:
-    """The value of each formula cell; {"error": number} for LibreOffice's error of that number."""
-    values: dict[str, Any] = {}
-    for part in sheet.queryContentCells(_FORMULA):
-        place = part.RangeAddress
-        for row, line in enumerate(part.getDataArray(), start=place.StartRow):
-            for column, value in enumerate(line, start=place.StartColumn):
-                if value == 0.0 or value == 1.0:
-                    value = truth(sheet.getCellByPosition(column, row), value)
-                values[address(column, row)] = value
-    for part in sheet.queryFormulaCells(_ERROR):
-        place = part.RangeAddress
-        for row in range(place.StartRow, place.EndRow + 1):
-            for column in range(place.StartColumn, place.EndColumn + 1):
-                number = sheet.getCellByPosition(column, row).getError()
-                values[address(column, row)] = {"error": number}
-    return values
-
-
-def truth(cell: Any, value: float) -> Any:
-    """TRUE or FALSE where the cell shows one, which LibreOffice keeps as a number."""
-    return {"TRUE": True, "FALSE": False}.get(cell.String, value)
-
-
-def address(column: int, row: int) -> str:
-    """A cell's address, from 0-based numbers."""
-    letters = ""
-    column += 1
-    while column:
-        column, letter = divmod(column - 1, 26)
-        letters = chr(65 + letter) + letters
-    return f"{letters}{row + 1}"
 
 
 def _read_requests(requests: Any) -> None:

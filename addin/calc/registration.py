@@ -92,7 +92,7 @@ def jobs_xcu() -> str:
 """
 
 
-def components(services: Iterable[str] = (names.SERVICE, names.JOB)) -> str:
+def components(services: Iterable[str] = (names.SERVICE, names.JOB, names.READER)) -> str:
     """Which file implements which service."""
     implementations = "".join(
         f'    <implementation name="{service}"><service name="{service}"/></implementation>\n'

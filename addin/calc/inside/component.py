@@ -12,8 +12,8 @@ import unohelper
 from com.sun.star.lang import XServiceInfo
 from com.sun.star.task import XJob
 
-from . import binary_form, load_job, mismatch, packages, record
-from .names import JOB, SERVICE
+from . import binary_form, load_job, mismatch, packages, reader, record
+from .names import JOB, READER, SERVICE
 from .second_process import SecondProcess
 
 _VALUE_ERROR = struct.unpack("<d", struct.pack("<Q", 0x7FF8000000000000 | 519))[0]
@@ -106,6 +106,19 @@ class _LoadJob(_Named, XJob):  # type: ignore[misc]
         return ()
 
 
+class _Reader(_Named, XJob):  # type: ignore[misc]
+    name = READER
+
+    def __init__(self, context: Any, *_: Any) -> None:
+        pass
+
+    def execute(self, arguments: Any) -> str:
+        """Answer the headless engine."""
+        given = {argument.Name: argument.Value for argument in arguments}
+        return reader.read(given["Document"], given["Titles"])
+
+
 g_ImplementationHelper = unohelper.ImplementationHelper()
 g_ImplementationHelper.addImplementation(_create_functions, SERVICE, (SERVICE,))
 g_ImplementationHelper.addImplementation(_LoadJob, JOB, (JOB,))
+g_ImplementationHelper.addImplementation(_Reader, READER, (READER,))

@@ -12,6 +12,7 @@ IDENTIFIER = "org.tausheet.calc"
 SERVICE = "org.tausheet.Functions"
 INTERFACE = "org.tausheet.XFunctions"
 JOB = "org.tausheet.LoadJob"
+READER = "org.tausheet.Reader"
 
 STORED_PREFIX = SERVICE.upper() + "."
 """What 7.4 puts before the cell name of a formula when it saves an .xlsx."""
