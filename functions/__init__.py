@@ -1,6 +1,8 @@
 """The arithmetic of tausheet: plain array functions that are also cell functions."""
 
 from tausheet.functions.crossing import crossing, stays_within
+from tausheet.functions.crossing_stages import stages_crossing
+from tausheet.functions.crossing_table import table_crossing
 from tausheet.functions.energy import (
     c_for_energy,
     dissipated,
@@ -51,9 +53,9 @@ __all__ = [
     "c_for_energy",
     "corner_frequency",
     "corners",
+    "crossing",
     "dc_offset",
     "dc_worst",
-    "crossing",
     "decay",
     "dissipated",
     "draw",
@@ -91,10 +93,12 @@ __all__ = [
     "sine",
     "square",
     "stages",
+    "stages_crossing",
     "stays_within",
     "step",
     "superpose",
     "table",
+    "table_crossing",
     "tau_at",
     "tau_for",
     "tau_rc",

@@ -78,10 +78,15 @@ def _with_digits(path: Path, before: Path | None) -> Path:
             else:
                 assert before is not None
                 assert before.exact is not None
-                begun.append(before.exact(Decimal(before.length)))
+                begun.append(before.exact(_minus(path.origin, before.origin)))
         return value_after(path, begun[0], s)
 
     return replace(path, exact=exact)
+
+
+@fifty_digits
+def _minus(a: Decimal, b: Decimal) -> Decimal:
+    return a - b
 
 
 @fifty_digits
