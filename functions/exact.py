@@ -49,6 +49,16 @@ def sum_of_products(*pairs: tuple[Any, Any]) -> Array:
     return result
 
 
+def quotient(top: Any, *below: Any) -> Array:
+    """top / (a b ...), however large or small what lies between may be."""
+    digits, exponent = np.frexp(top)
+    for number in below:
+        own_digits, own_exponent = np.frexp(number)
+        digits, exponent = digits / own_digits, exponent - own_exponent
+    result: Array = np.asarray(np.ldexp(digits, exponent))
+    return result
+
+
 def fraction_of_product(a: Any, b: Any) -> Array:
     """a b less the nearest whole number, from -0.5 to 0.5: the part of a turn, however many."""
     a, a_exponent = np.frexp(a)

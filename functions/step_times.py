@@ -22,6 +22,22 @@ from tausheet.functions.exact import Array
 Share = Annotated[Any, Number(low=0, low_open=True, high=1)]
 
 
+def lags_to(level: Any, initial: Any, final: Any) -> tuple[Array, Any]:
+    """Time constants that a step response takes to a level, and whether it lies strictly between.
+
+    ln((final - initial) / (final - level)); any number where the level does not lie between.
+    """
+    done, left = level - initial, final - level
+    if not np.isfinite(done + left).all():
+        done, left = level / 2 - initial / 2, final / 2 - level / 2
+    between = ((initial < level) & (level < final)) | ((initial > level) & (level > final))
+    ratio = np.where(between, done, 1.0) / np.where(between, left, 1.0)
+    lags: Array = np.log1p(ratio)
+    if np.isinf(ratio).any():
+        lags = np.where(np.isinf(ratio), np.log(np.abs(done)) - np.log(np.abs(left)), lags)
+    return lags, between
+
+
 def _time_to_scalar(
     level: float, tau: float, initial: float, final: float, delay: float = 0.0
 ) -> float | None:
@@ -29,10 +45,11 @@ def _time_to_scalar(
         type(level) is type(tau) is type(initial) is type(final) is type(delay) is float
         and 0.0 < tau < math.inf
         and 0.0 <= delay < math.inf
+        and (initial < level < final or initial > level > final)
     ):
         return None
-    done, left = level / 2 - initial / 2, final / 2 - level / 2
-    if done * left <= 0:  # starts there, never gets there, or beyond the numbers
+    done, left = level - initial, final - level
+    if not math.isfinite(done + left):
         return None
     t = delay + tau * math.log1p(done / left)
     return t if math.isfinite(t) else None
@@ -67,8 +84,8 @@ def time_to(
     References: closed form of the step response, solved for t.
     """
     there = level == initial
-    t, between = _crossing(level, tau, initial, final)
-    return Answer(np.where(there, 0.0, delay + t)).unless(
+    lags, between = lags_to(level, initial, final)
+    return Answer(np.where(there, 0.0, delay + tau * lags)).unless(
         ~there & ~between,
         NotAvailable,
         "level is {level}, which is never reached on the way from initial, {initial}, to final, "
@@ -76,15 +93,19 @@ def time_to(
     )
 
 
-def _crossing(level: Array, tau: Array, initial: Array, final: Array) -> tuple[Array, Any]:
-    """Time from the step to a level strictly between its ends, and where it is."""
-    # halves, so that no difference overflows
-    done, left = level / 2 - initial / 2, final / 2 - level / 2
-    between = ((initial < level) & (level < final)) | ((initial > level) & (level > final))
-    return tau * np.log1p(np.where(between, done / left, 1.0)), between
+def _until_below_scalar(level: float, tau: float, initial: float, final: float) -> float | None:
+    if final < level < initial:
+        return _time_to_scalar(level, tau, initial, final)
+    return None
 
 
-@cell_function("FO_TIME_UNTIL_BELOW", "Crossing time")
+def _until_above_scalar(level: float, tau: float, initial: float, final: float) -> float | None:
+    if initial < level < final:
+        return _time_to_scalar(level, tau, initial, final)
+    return None
+
+
+@cell_function("FO_TIME_UNTIL_BELOW", "Crossing time", scalar=_until_below_scalar)
 def time_until_below(level: Finite, tau: Positive, initial: Finite, final: Finite) -> Numbers:
     """Time from which a step response stays at or below a level.
 
@@ -114,7 +135,7 @@ def time_until_below(level: Finite, tau: Positive, initial: Finite, final: Finit
     return _until(level, tau, initial, final, initial <= level, final <= level, "below")
 
 
-@cell_function("FO_TIME_UNTIL_ABOVE", "Crossing time")
+@cell_function("FO_TIME_UNTIL_ABOVE", "Crossing time", scalar=_until_above_scalar)
 def time_until_above(level: Finite, tau: Positive, initial: Finite, final: Finite) -> Numbers:
     """Time from which a step response stays at or above a level.
 
@@ -145,9 +166,9 @@ def time_until_above(level: Finite, tau: Positive, initial: Finite, final: Finit
 def _until(
     level: Array, tau: Array, initial: Array, final: Array, starts: Any, ends: Any, side: str
 ) -> Answer:
-    t, between = _crossing(level, tau, initial, final)
+    lags, between = lags_to(level, initial, final)
     always = starts & ends
-    return Answer(np.where(always, 0.0, t)).unless(
+    return Answer(np.where(always, 0.0, tau * lags)).unless(
         ~always & ~(between & ends),
         NotAvailable,
         f"y never stays at or {side} level, {{level}}, on its way from initial, {{initial}}, to "

@@ -17,7 +17,9 @@ from tausheet.functions.arguments import (
     words,
 )
 from tausheet.functions.catalogue import Answer, cell_function
-from tausheet.functions.errors import DomainError, NotAvailable
+from tausheet.functions.errors import NotAvailable
+from tausheet.functions.exact import quotient
+from tausheet.functions.step_times import lags_to
 
 
 def _tau_rc_scalar(resistance: float, capacitance: float) -> float | None:
@@ -100,7 +102,7 @@ def tau_rx(resistance: Positive, reactance: NonNegative, frequency: Positive) ->
 
     References: definition, X = 2 pi f L.
     """
-    return reactance / resistance / (2 * np.pi * frequency)
+    return quotient(reactance, resistance, frequency, 2 * np.pi)
 
 
 @cell_function("FO_PARALLEL", "Time constants", matrix=True)
@@ -155,9 +157,8 @@ def tau_for(level: Finite, t: Positive, initial: Finite, final: Finite) -> Numbe
 
     References: closed form of the step response, solved for tau.
     """
-    done, left = level / 2 - initial / 2, final / 2 - level / 2
-    between = ((initial < level) & (level < final)) | ((initial > level) & (level > final))
-    return Answer(t / np.log1p(np.where(between, done / left, 1.0))).unless(
+    lags, between = lags_to(level, initial, final)
+    return Answer(t / lags).unless(
         ~between,
         NotAvailable,
         "level is {level}, which is not strictly between initial, {initial}, and final, {final}; "
@@ -165,7 +166,7 @@ def tau_for(level: Finite, t: Positive, initial: Finite, final: Finite) -> Numbe
     )
 
 
-_INFERRED = {"copper": 0.00393, "aluminium": 0.00403}
+_COEFFICIENTS = {"copper": 0.00393, "aluminium": 0.00403}
 """Temperature coefficients of resistance at 20 C (1/K)."""
 
 
@@ -186,21 +187,17 @@ def resistance_at(
 
     Result: resistance (ohm), in the broadcast shape of the arguments.
 
-    Errors: #NUM! outside the ranges, or so cold that the straight line gives nothing; #VALUE! for
-    a blank, a text where a number belongs, or an unknown word.
+    Errors: #NUM! outside the ranges; #VALUE! for a blank, a text where a number belongs, or an
+    unknown word.
 
-    Assumes: the straight line of the standards, meant for -50 to 200 C or so (common practice).
+    Assumes: the straight line of the standards, which holds best from -50 to 200 C (common
+    practice); soft copper of full conductivity, hard-drawn aluminium.
 
     Example:
         >>> round(resistance_at(10.0, 120.0), 6)
         13.93
 
-    References: IEC 60028 for copper; aluminium from IEC 60889, from memory.
+    References: IEC 60028 for copper (1/0.00393 = 254.45 = 234.5 + 20); IEC 60889 for aluminium,
+    from memory. IEC 60034-1 rounds the two lines to 235 + T and 225 + T.
     """
-    factor = 1 + _INFERRED[material] * (temperature - 20)
-    return Answer(resistance_20 * factor).unless(
-        factor <= 0,
-        DomainError,
-        "temperature is {temperature}, where the straight line of resistance against temperature "
-        "has no meaning; enter a conductor temperature above -200 degC",
-    )
+    return resistance_20 * (1 + _COEFFICIENTS[material] * (temperature - 20))
