@@ -10,6 +10,7 @@ import math
 from collections.abc import Callable, Iterator
 from typing import Any
 
+import exact_responses as book
 import mpmath
 import numpy as np
 import pytest
@@ -27,64 +28,6 @@ CORNERS = [1e-12, 1e-9, 1e-6, 1e-3, 0.499, 0.5, 0.501, 0.999, 1.0, 1.001, 2.0, 3
 def _sixty_digits() -> Iterator[None]:
     with mpmath.workdps(60):
         yield
-
-
-def exp(x: Any) -> Any:
-    return mpmath.exp(x)
-
-
-def natural(t: Any, tau: Any, y0: Any) -> Any:
-    return y0 * exp(-t / tau)
-
-
-def step(t: Any, tau: Any, y0: Any, y1: Any, delay: Any = 0) -> Any:
-    return y0 if t <= delay else y1 + (y0 - y1) * exp(-(t - delay) / tau)
-
-
-def ramp(t: Any, tau: Any, y0: Any, a: Any, b: Any, length: Any) -> Any:
-    def line(s: Any) -> Any:
-        slope = (b - a) / length
-        return a + slope * (s - tau) + (y0 - a + slope * tau) * exp(-s / tau)
-
-    if length == 0:
-        return step(t, tau, y0, b)
-    return line(t) if t <= length else step(t - length, tau, line(length), b)
-
-
-def sine(t: Any, tau: Any, y0: Any, a: Any, f: Any, phase: Any, offset: Any) -> Any:
-    w, p = 2 * mpmath.pi * f, mpmath.radians(phase)
-    d = 1 + (w * tau) ** 2
-
-    def settled(s: Any) -> Any:
-        return a * (mpmath.sin(w * s + p) - w * tau * mpmath.cos(w * s + p)) / d
-
-    return offset + settled(t) + (y0 - offset - settled(0)) * exp(-t / tau)
-
-
-def decay(t: Any, tau: Any, y0: Any, a: Any, other: Any, offset: Any) -> Any:
-    if other == tau:
-        part = a * t / tau * exp(-t / tau)
-    else:
-        part = a * other / (other - tau) * (exp(-t / other) - exp(-t / tau))
-    return offset + (y0 - offset) * exp(-t / tau) + part
-
-
-def pulse(t: Any, tau: Any, y0: Any, rest: Any, level: Any, length: Any, delay: Any) -> Any:
-    y = step(min(t, delay), tau, y0, rest)
-    y = step(min(max(t - delay, 0), length), tau, y, level)
-    return step(max(t - delay - length, 0), tau, y, rest)
-
-
-def square(t: Any, tau: Any, y0: Any, low: Any, high: Any, period: Any, duty: Any) -> Any:
-    whole = mpmath.floor(t / period)
-    inside, on, off = t - whole * period, duty * period, (1 - duty) * period
-    # start of a settled period: y = step(off, step(on, y, high), low)
-    fall = exp(-period / tau)
-    once = step(off, tau, step(on, tau, mpf(0), high), low)
-    settled = once / (1 - fall)
-    y = settled + (y0 - settled) * exp(-whole * period / tau)
-    y = step(min(inside, on), tau, y, high)
-    return step(max(inside - on, 0), tau, y, low)
 
 
 rng = np.random.default_rng(20)
@@ -118,22 +61,26 @@ TAU = spread(1e-9, 1e6)
 T = times(TAU)
 SHAPES: dict[str, tuple[Callable[..., Any], tuple[np.ndarray, ...], tuple[int, ...]]] = {
     # reference, arguments after t and tau, which of them are levels
-    "natural": (natural, (levels(),), (0,)),
-    "step": (step, (levels(), levels(), T * rng.choice([0, 0.3, 0.999999, 1, 2], CASES)), (0, 1)),
-    "ramp": (ramp, (levels(), levels(), levels(), T * spread(1e-9, 1e3)), (0, 1, 2)),
+    "natural": (book.natural, (levels(),), (0,)),
+    "step": (
+        book.step,
+        (levels(), levels(), T * rng.choice([0, 0.3, 0.999999, 1, 2], CASES)),
+        (0, 1),
+    ),
+    "ramp": (book.ramp, (levels(), levels(), levels(), T * spread(1e-9, 1e3)), (0, 1, 2)),
     "sine": (
-        sine,
+        book.sine,
         (levels(), levels(), spread(1e-9, 1e6) / TAU, rng.uniform(-720, 720, CASES), levels()),
         (0, 1, 4),
     ),
-    "decay": (decay, (levels(), levels(), near(TAU), levels()), (0, 1, 3)),
+    "decay": (book.decay, (levels(), levels(), near(TAU), levels()), (0, 1, 3)),
     "pulse": (
-        pulse,
+        book.pulse,
         (levels(), levels(), levels(), T * spread(1e-6, 10), T * spread(1e-6, 2)),
         (0, 1, 2),
     ),
     "square": (
-        square,
+        book.square,
         (levels(), levels(), levels(), T * spread(1e-6, 1e2), rng.uniform(0, 1, CASES)),
         (0, 1, 2),
     ),
@@ -207,7 +154,7 @@ def test_a_square_is_exact_at_any_period(periods: int, place: float) -> None:
         (3e-4, 2.0, 0.5),
     ):
         t = (periods + place) * period
-        exact = exactly(square, t, tau, 2.0, -1.0, 5.0, period, duty)
+        exact = exactly(book.square, t, tau, 2.0, -1.0, 5.0, period, duty)
         got = fo.square(t, tau, 2.0, -1.0, 5.0, period, duty)
         assert abs(mpf(got) - exact) <= 5 * TOLERANCE * max(1.0, t / (350 * tau)), (period, tau)
 
