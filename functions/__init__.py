@@ -16,7 +16,8 @@ from tausheet.functions.fault import dc_offset, dc_worst, fault_current, fault_i
 from tausheet.functions.fit import Fit, FitFrom, fit, fit_from
 from tausheet.functions.frequency import corner_frequency, gain_db, noise_bandwidth, phase, tau_at
 from tausheet.functions.network import Equivalent, FirstOrder, equivalent, network
-from tausheet.functions.network_response import network_at
+from tausheet.functions.network_energy import network_energy
+from tausheet.functions.network_response import network_at, network_crossing, network_peak
 from tausheet.functions.overload import trip_time
 from tausheet.functions.parts import preferred, rkm, rkm_text
 from tausheet.functions.periodic import Ripple, ripple
@@ -72,6 +73,9 @@ __all__ = [
     "natural",
     "network",
     "network_at",
+    "network_crossing",
+    "network_energy",
+    "network_peak",
     "noise_bandwidth",
     "parallel",
     "peak",

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+import math
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from decimal import Decimal
 
@@ -87,22 +88,25 @@ class Response:
 
     def impulses(self, t: float) -> tuple[float, ...]:
         """Weights of an impulse at t and of its derivatives; empty when there is none."""
-        weights, sizes = [], []
-        for order in range(max(len(self.direct) - 1, len(self.struck))):
+        orders = []
+        for order in range(self.depth):
             terms = [self.struck[order]] if t == 0 and order < len(self.struck) else []
             for derivative in range(order + 1, len(self.direct)):
                 for weight, source in self.direct[derivative]:
                     own = derivatives(source, derivative - 1 - order)
                     terms += [weight * jump(t, each) for each in own]
-            weights.append(sum(terms))
-            sizes.append(sum(map(abs, terms)))
-        found = [abs(w) > _NOTHING * size for w, size in zip(weights, sizes, strict=True)]
-        return tuple(weights) if any(found) else ()
+            orders.append(terms)
+        return totals(orders)
+
+    @property
+    def depth(self) -> int:
+        """How many kinds of impulses there may be: an impulse, its derivative, and so on."""
+        return max(len(self.direct) - 1, len(self.struck))
 
     def impulsive(self, t: Array) -> NDArray[np.bool_]:
         """Where the quantity is an impulse."""
         mask = np.zeros(np.shape(t), dtype=bool)
-        if len(self.direct) < 2 and not self.struck:
+        if not self.depth:
             return mask
         for index, moment in np.ndenumerate(t):
             mask[index] = bool(self.impulses(float(moment)))
@@ -135,6 +139,14 @@ class Response:
                 f"network: {self.name} has no final value, since it integrates a source"
             )
         return total + sum(weight * area for weight, area in areas if area is not None)
+
+
+def totals(orders: Sequence[Sequence[float]]) -> tuple[float, ...]:
+    """The sum of the terms of each order; empty when there is nothing but rounding in them."""
+    sums = tuple(math.fsum(terms) for terms in orders)
+    sizes = [math.fsum(map(abs, terms)) for terms in orders]
+    real = [abs(total) > _NOTHING * size for total, size in zip(sums, sizes, strict=True)]
+    return sums if any(real) else ()
 
 
 def derivatives(source: Source, count: int) -> list[Source]:

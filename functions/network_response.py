@@ -6,12 +6,24 @@ from typing import Annotated, Any
 
 import numpy as np
 
-from tausheet.functions.arguments import Finite, Numbers
+from tausheet.functions.arguments import Finite, Numbers, shown, words
 from tausheet.functions.catalogue import Answer, cell_function
-from tausheet.functions.errors import NotAvailable
-from tausheet.functions.network_quantity import FORMS, Response
+from tausheet.functions.crossing import (
+    NEVER,
+    UNDECIDED,
+    WAYS,
+    Count,
+    Direction,
+    crossing_of,
+    each,
+)
+from tausheet.functions.errors import DomainError, InputError, NotAvailable
+from tausheet.functions.extremes import Peak, peak_of
+from tausheet.functions.network_paths import Stretches, Track, sources_of
+from tausheet.functions.network_quantity import FORMS, Power, Response
 from tausheet.functions.network_quantity import quantity as asked
 from tausheet.functions.network_table import NetworkTable, OneText
+from tausheet.functions.roots import Undecided
 
 _NETWORK = NetworkTable()
 
@@ -78,3 +90,147 @@ def _at(response: Response, t: Any) -> Any:
     after = response.at(np.maximum(t, 0.0))
     earlier = response.before if response.before is not None else 0.0
     return np.where(t < 0, earlier, after)
+
+
+@cell_function("FO_NETWORK_CROSSING", "Networks")
+def network_crossing(
+    level: Finite,
+    network: Annotated[Any, _NETWORK],
+    quantity: Annotated[Any, OneText(FORMS)],
+    direction: Direction = "either",
+    count: Count = 1,
+    after: Finite = 0.0,
+) -> Numbers:
+    """The count-th moment after `after` at which a voltage or current passes a level.
+
+    The quantity obeys tau dq/dt + q = F with F made of the sources' own shapes, so that, as for
+    FO_CROSSING, the zeros of F - level bound the search. A jump across the level counts at its
+    moment, the one at t = 0 too when `after` is negative.
+
+    Arguments:
+        level: value of the quantity to be passed (V or A); any number
+        network: range with a heading row, as for FO_NETWORK; a network table
+        quantity: a voltage or a current, with a node or an element of the table;
+            "voltage at NODE", "voltage across NAME", "current through NAME" or "power in NAME"
+        direction: which passages count; "either", "rising", "falling"
+        count: which of them is asked for, 1 when left out; whole number >= 1
+        after: only later ones count (s), 0 when left out; any number
+
+    Result: time (s), in the broadcast shape of level, count and after.
+
+    Errors: #N/A when the quantity does not pass the level so often; #VALUE! for a power and as for
+    FO_NETWORK_AT; #NUM! outside the ranges, or when too many turning points had to be told apart.
+
+    Assumes: linear, constant elements; at t = 0 charge and flux are conserved.
+
+    Example:
+        >>> rows = [["Name", "Kind", "From", "To", "Value", "Before"],
+        ...         ["Supply", "voltage source", "ground", "in", 24.0, 0.0],
+        ...         ["R1", "resistor", "in", "out", 1000.0, None],
+        ...         ["C1", "capacitor", "out", "ground", 1e-6, None]]
+        >>> round(network_crossing(12.0, rows, "voltage at out"), 9)
+        0.000693147
+
+    References: modified nodal analysis, superposition.
+    """
+    response = _one_response(network, quantity)
+    track = Track(response, Stretches(sources_of(response)))
+
+    def one(level: float, count: float, after: float) -> float | None:
+        earlier = response.before if after < 0 else None
+        return crossing_of(track.paths(after, level), level, WAYS[direction], count, after, earlier)
+
+    values, never, undecided = each(one, level, count, after)
+    return (
+        Answer(values)
+        .unless(undecided, DomainError, UNDECIDED)
+        .unless(never, NotAvailable, NEVER.replace("y ", "the quantity ").replace(" y ", " it "))
+    )
+
+
+def _one_response(network: Any, quantity: str) -> Response:
+    found = asked(network, quantity)
+    if isinstance(found, Power):
+        raise InputError(
+            f"quantity is {shown(quantity)}, a power; only a voltage or a current can be asked for "
+            "here"
+        )
+    return found
+
+
+@cell_function("FO_NETWORK_PEAK", "Networks")
+def network_peak(
+    network: Annotated[Any, _NETWORK],
+    quantity: Annotated[Any, OneText(FORMS)],
+    t_from: Finite,
+    t_to: Finite,
+    kind: Annotated[str, words("max", "min", "abs")] = "max",
+) -> Any:
+    """The extreme value of a voltage or current of a network in a window of time, and when.
+
+        tau dq/dt + q = F: dq/dt is 0 at most once between two zeros of dF/dt or jumps
+
+    Both ends of the window and both sides of every jump are looked at; impulses are left out. Of
+    equal extremes the earliest counts.
+
+    Arguments:
+        network: range with a heading row, as for FO_NETWORK; a network table
+        quantity: a voltage or a current, with a node or an element of the table;
+            "voltage at NODE", "voltage across NAME", "current through NAME" or "power in NAME"
+        t_from: start of the window (s); any number
+        t_to: end of the window (s), not before t_from; any number
+        kind: largest, smallest, or largest magnitude (with its sign); "max", "min", "abs"
+
+    Result: value (V or A) and time (s), each in the broadcast shape of t_from and t_to.
+
+    Errors: #NUM! for t_to before t_from, or when too many turning points had to be told apart;
+    #N/A where the network before t = 0 leaves the quantity open; #VALUE! for a power and as for
+    FO_NETWORK_AT.
+
+    Assumes: linear, constant elements; at t = 0 charge and flux are conserved.
+
+    Example:
+        >>> rows = [["Name", "Kind", "From", "To", "Value", "Before"],
+        ...         ["Supply", "voltage source", "ground", "in", 24.0, 0.0],
+        ...         ["R1", "resistor", "in", "out", 1000.0, None],
+        ...         ["C1", "capacitor", "out", "ground", 1e-6, None]]
+        >>> network_peak(rows, "current through R1", -1.0, 1.0)
+        Peak(value=0.024, time=0.0)
+
+    References: modified nodal analysis, superposition.
+    """
+    response = _one_response(network, quantity)
+    track = Track(response, Stretches(sources_of(response)))
+    begin, end = np.broadcast_arrays(t_from, t_to)
+    found = Peak(np.zeros(begin.shape), np.zeros(begin.shape))
+    undecided = np.zeros(begin.shape, bool)
+    backward = end < begin
+    unknown = (begin < 0) & (response.before is None)
+    for index in np.ndindex(begin.shape):
+        if backward[index] or unknown[index]:
+            continue
+        window = float(begin[index]), float(end[index])
+        try:
+            if window[1] < 0:
+                one = Peak(response.before, window[0])
+            else:
+                one = peak_of(track.paths(window[0]), *window, kind, response.before)
+        except Undecided:
+            undecided[index] = True
+            continue
+        found.value[index], found.time[index] = one
+    return (
+        Answer(found)
+        .unless(
+            backward,
+            DomainError,
+            "t_to is {t_to}, before t_from, {t_from}; enter a t_to that is not before t_from",
+        )
+        .unless(
+            unknown,
+            NotAvailable,
+            "t_from is {t_from}, and the network before t = 0 does not determine the quantity; "
+            "enter a t_from of 0 or later",
+        )
+        .unless(undecided, DomainError, UNDECIDED)
+    )
