@@ -30,8 +30,115 @@ def good(name: str, *arguments: tuple[str, str, Any]) -> Good:
     return Good(name, arguments)
 
 
-# domains: ">0", ">=0", "0..1", "any", "word", "code"; a "?" after it means that it may be left out
+# domains: those of NUMBERS, "word", "code"; a "?" after it means that it may be left out
 GOOD = [
+    good("FO_TAU_RC", ("resistance", ">=0", 47e3), ("capacitance", ">=0", 0.0047)),
+    good("FO_TAU_RL", ("resistance", ">0", 20.0), ("inductance", ">=0", 1.5)),
+    good(
+        "FO_TAU_RX",
+        ("resistance", ">0", 0.1),
+        ("reactance", ">=0", 1.0),
+        ("frequency", ">0", 50.0),
+    ),
+    good(
+        "FO_TAU_FOR",
+        ("level", "any", 60.0),
+        ("t", ">0", 5.0),
+        ("initial", "any", 680.0),
+        ("final", "any", 10.0),
+    ),
+    good(
+        "FO_RESISTANCE_AT",
+        ("resistance_20", ">=0", 10.0),
+        ("temperature", "-200..1000", 120.0),
+        ("material", "word?", "aluminium"),
+    ),
+    good("FO_NATURAL", ("t", "any", 0.1), ("tau", ">0", 0.2), ("initial", "any", 5.0)),
+    good(
+        "FO_STEP",
+        ("t", "any", 0.1),
+        ("tau", ">0", 0.2),
+        ("initial", "any", 5.0),
+        ("final", "any", 1.0),
+        ("delay", ">=0?", 0.0),
+    ),
+    good(
+        "FO_RAMP",
+        ("t", "any", 0.1),
+        ("tau", ">0", 0.2),
+        ("initial", "any", 5.0),
+        ("level_from", "any", 1.0),
+        ("level_to", "any", 2.0),
+        ("duration", ">=0", 0.3),
+    ),
+    good(
+        "FO_SINE",
+        ("t", "any", 0.1),
+        ("tau", ">0", 0.2),
+        ("initial", "any", 5.0),
+        ("amplitude", "any", 325.0),
+        ("frequency", ">=0", 50.0),
+        ("phase", "any?", 0.0),
+        ("offset", "any?", 0.0),
+    ),
+    good(
+        "FO_DECAY",
+        ("t", "any", 0.1),
+        ("tau", ">0", 0.2),
+        ("initial", "any", 5.0),
+        ("amplitude", "any", 1.0),
+        ("source_tau", ">0", 0.2),
+        ("offset", "any?", 0.0),
+    ),
+    good(
+        "FO_PULSE",
+        ("t", "any", 0.1),
+        ("tau", ">0", 0.2),
+        ("initial", "any", 5.0),
+        ("resting", "any", 1.0),
+        ("level", "any", 9.0),
+        ("duration", ">=0", 0.3),
+        ("delay", ">=0?", 0.0),
+    ),
+    good(
+        "FO_SQUARE",
+        ("t", "any", 0.1),
+        ("tau", ">0", 0.2),
+        ("initial", "any", 5.0),
+        ("low", "any", 1.0),
+        ("high", "any", 9.0),
+        ("period", ">0", 0.3),
+        ("duty", "0..1", 0.3),
+    ),
+    good(
+        "FO_TIME_TO",
+        ("level", "any", 60.0),
+        ("tau", ">0", 5.0),
+        ("initial", "any", 680.0),
+        ("final", "any", 10.0),
+        ("delay", ">=0?", 0.0),
+    ),
+    good(
+        "FO_TIME_UNTIL_BELOW",
+        ("level", "any", 60.0),
+        ("tau", ">0", 5.0),
+        ("initial", "any", 680.0),
+        ("final", "any", 10.0),
+    ),
+    good(
+        "FO_TIME_UNTIL_ABOVE",
+        ("level", "any", 600.0),
+        ("tau", ">0", 5.0),
+        ("initial", "any", 10.0),
+        ("final", "any", 680.0),
+    ),
+    good(
+        "FO_RISE_TIME",
+        ("tau", ">0", 5.0),
+        ("low", "0<..<1?", 0.1),
+        ("high", "0<..<1?", 0.9),
+    ),
+    good("FO_SETTLING_TIME", ("tau", ">0", 5.0), ("tolerance", "0<..1", 0.01)),
     good("FO_ENERGY_C", ("capacitance", ">0", 0.0047), ("voltage", "any", 680.0)),
     good("FO_ENERGY_L", ("inductance", ">0", 1.5), ("current", "any", 8.0)),
     good("FO_C_FOR_ENERGY", ("energy", ">0", 32.0), ("v_from", ">0", 100.0), ("v_to", ">=0", 60.0)),
@@ -147,15 +254,23 @@ GOOD = [
     ),
 ]
 
-NUMBERS = (">0", ">=0", "0..1", "any")
+NUMBERS = (">0", ">=0", "0..1", "0<..1", "0<..<1", "-200..1000", "any")
+FRACTIONS = ("0..1", "0<..1", "0<..<1")
 EVERY = (*NUMBERS, "word", "code")
 NOT_FINITE = {**dict.fromkeys(NUMBERS, NUM), "word": VALUE, "code": VALUE}
 
 WRONG: list[tuple[str, Any, dict[str, ErrorKind]]] = [
     # what is wrong, the value, the kind of error for numbers, words and codes
-    ("above one", 1.001, {"0..1": NUM}),
-    ("negative", -1.0, {"0..1": NUM, ">0": NUM, ">=0": NUM, "word": VALUE, "code": VALUE}),
-    ("zero", 0.0, {">0": NUM, "word": VALUE, "code": VALUE}),
+    ("above one", 1.001, dict.fromkeys(FRACTIONS, NUM)),
+    ("one", 1.0, {"0<..<1": NUM}),
+    ("too cold", -200.1, {"-200..1000": NUM}),
+    ("too hot", 1000.1, {"-200..1000": NUM}),
+    (
+        "negative",
+        -1.0,
+        {**dict.fromkeys((*FRACTIONS, ">0", ">=0"), NUM), "word": VALUE, "code": VALUE},
+    ),
+    ("zero", 0.0, {**dict.fromkeys(("0<..1", "0<..<1", ">0"), NUM), "word": VALUE, "code": VALUE}),
     ("blank", None, dict.fromkeys(EVERY, VALUE)),
     ("empty text", "", dict.fromkeys(EVERY, VALUE)),
     ("text", "Quay 4", dict.fromkeys(EVERY, VALUE)),
