@@ -22,8 +22,14 @@ import pytest
 from numpy.typing import NDArray
 from scipy.linalg import expm, lstsq, null_space, ordqz
 
-from tausheet.functions import network, network_at
-from tausheet.functions.errors import ErrorKind, error_codes
+from tausheet.functions import (
+    network,
+    network_at,
+    network_crossing,
+    network_energy,
+    network_peak,
+)
+from tausheet.functions.errors import ErrorKind, NotAvailable, error_codes
 from tausheet.functions.network_elements import Kind
 
 Array = NDArray[Any]
@@ -671,3 +677,70 @@ def test_network_of_the_campaign(seed: int) -> None:
 def test_the_campaign_covers_every_kind() -> None:
     kinds = {part.kind for seed in range(60) for part in found(seed)[0].parts}
     assert kinds == {kind.value for kind in Kind}
+
+
+def compare_energy(seed: int) -> None:
+    """Stores against the reference's states, all elements against one another (Tellegen)."""
+    circuit, reference = found(seed)
+    solution = Solution(reference, 4.0)
+    rows = table(circuit, 1.0, 1.0)
+    begin, end = solution.at(0.0), solution.at(3.0)
+    total, size = 0.0, 0.0
+    for part in circuit.parts:
+        try:
+            energy = network_energy(rows, part.name, 0.0, 3.0)
+        except NotAvailable as refused:  # a voltage and a current impulse at one later moment
+            if "impulse meets an impulse" not in str(refused):
+                raise
+            total = math.nan
+            continue
+        total, size = total + energy, max(size, abs(energy))
+        if part in reference.stores():
+            state = reference.state_row(part)
+            stored = part.value * ((state @ end) ** 2 - (state @ begin) ** 2) / 2
+            assert energy == pytest.approx(stored, rel=1e-7, abs=1e-7 * max(1.0, size)), part.name
+    assert math.isnan(total) or total == pytest.approx(0.0, abs=1e-11 * size)
+
+
+def compare_crossings(seed: int) -> None:
+    """Passages and extremes against samples of the quantity."""
+    circuit, _ = found(seed)
+    rows = table(circuit, 1.0, 1.0)
+    rng = np.random.default_rng(seed)
+    part = circuit.parts[int(rng.integers(len(circuit.parts)))]
+    quantity = f"{rng.choice(['voltage across', 'current through'])} {part.name}"
+    t = np.linspace(1e-3, 6.0, 3001) + 1e-7
+    q = network_at(t, rows, quantity)
+    t, q = t[error_codes(q) == 0], q[error_codes(q) == 0]
+    span = float(t[0]), float(t[-1])
+    scale = float(np.abs(q).max())
+    step = float(np.abs(np.diff(q)).max()) + 1e-12 * scale
+    for kind, sign in (("max", 1.0), ("min", -1.0)):
+        value, moment = network_peak(rows, quantity, *span, kind)
+        best = (sign * q).max()
+        assert -1e-12 * scale <= sign * value - best <= step
+        assert span[0] <= moment <= span[1]
+    if np.ptp(q) < 1e-9 * scale:
+        return
+    level = float(q.min() + rng.uniform(0.05, 0.95) * np.ptp(q))
+    passed = np.flatnonzero(np.diff(np.sign(q - level)))
+    for count, index in enumerate(passed[:3], start=1):
+        moment = network_crossing(level, rows, quantity, "either", count, span[0])
+        assert t[index] <= moment <= t[index + 1]
+
+
+@pytest.mark.parametrize("seed", range(20))
+def test_network_energy(seed: int) -> None:
+    compare_energy(seed)
+
+
+@pytest.mark.parametrize("seed", range(30))
+def test_network_crossings(seed: int) -> None:
+    compare_crossings(seed)
+
+
+@pytest.mark.campaign
+@pytest.mark.parametrize("seed", range(60, 360))
+def test_energy_and_crossings_of_the_campaign(seed: int) -> None:
+    compare_energy(seed)
+    compare_crossings(seed)
