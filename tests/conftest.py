@@ -2,7 +2,12 @@
 
 from __future__ import annotations
 
+import hypothesis
 import pytest
+
+# the same cases in each run, and no failure because the machine was busy
+hypothesis.settings.register_profile("tausheet", deadline=None, derandomize=True)
+hypothesis.settings.load_profile("tausheet")
 
 
 def pytest_addoption(parser: pytest.Parser) -> None:
