@@ -589,3 +589,19 @@ def test_blank_sheet_fails_and_asks_for_everything(tmp_path: Path) -> None:
             assert isinstance(blank[symbol], ErrorKind)
     assert blank["inputs_valid"] == 0
     assert set(blank.checks().values()) == {"FAIL"}
+
+
+@pytest.mark.parametrize(
+    ("series", "minutes", "ohms"),
+    [("E24", 5.2, 30e3), ("E12", 5.2, 27e3), ("E96", 5.2, 32.4e3), ("E24", 5.3, 33e3)],
+)
+def test_preferred_value_is_never_above_the_largest_allowed(
+    demo: Filled, series: str, minutes: float, ohms: float
+) -> None:
+    """R_max is 32.55 kohm for 5.2 min and 33.18 kohm for 5.3 min; the numbers are IEC 60063's."""
+    demo.put(value_of_series=series, value_of_t_own=minutes)
+    assert demo["R_pref"] == ohms <= demo["R_max"]
+    assert demo["R_pref_hand"] == pytest.approx(ohms, rel=1e-15)
+    # the preferred value itself keeps the time
+    demo.put(value_of_series=series, value_of_t_own=minutes, value_of_R_unit=ohms / 1e3)
+    assert demo["check_time"] == "PASS"
