@@ -166,6 +166,12 @@ class Power:
     voltage: Response
     current: Response
 
+    @property
+    def before(self) -> float | None:
+        """Until t = 0; None when the network does not determine it."""
+        v, i = self.voltage.before, self.current.before
+        return None if v is None or i is None else v * i
+
 
 def quantity(network: Network, text: str) -> Response | Power:
     """The quantity that a text asks for."""

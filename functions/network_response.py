@@ -20,6 +20,7 @@ from tausheet.functions.crossing import (
 from tausheet.functions.errors import DomainError, InputError, NotAvailable
 from tausheet.functions.extremes import Peak, peak_of
 from tausheet.functions.network_paths import Stretches, Track, sources_of
+from tausheet.functions.network_power import power_peak
 from tausheet.functions.network_quantity import FORMS, Power, Response
 from tausheet.functions.network_quantity import quantity as asked
 from tausheet.functions.network_table import NetworkTable, OneText
@@ -133,7 +134,12 @@ def network_crossing(
 
     References: modified nodal analysis, superposition.
     """
-    response = _one_response(network, quantity)
+    response = asked(network, quantity)
+    if isinstance(response, Power):
+        raise InputError(
+            f"quantity is {shown(quantity)}, a power; enter a voltage or a current, which a power "
+            "follows from"
+        )
     track = Track(response, Stretches(sources_of(response)))
 
     def one(level: float, count: float, after: float) -> float | None:
@@ -148,16 +154,6 @@ def network_crossing(
     )
 
 
-def _one_response(network: Any, quantity: str) -> Response:
-    found = asked(network, quantity)
-    if isinstance(found, Power):
-        raise InputError(
-            f"quantity is {shown(quantity)}, a power; only a voltage or a current can be asked for "
-            "here"
-        )
-    return found
-
-
 @cell_function("FO_NETWORK_PEAK", "Networks")
 def network_peak(
     network: Annotated[Any, _NETWORK],
@@ -166,26 +162,26 @@ def network_peak(
     t_to: Finite,
     kind: Annotated[str, words("max", "min", "abs")] = "max",
 ) -> Any:
-    """The extreme value of a voltage or current of a network in a window of time, and when.
+    """The extreme value of a voltage, current or power of a network in a window, and when.
 
-        tau dq/dt + q = F: dq/dt is 0 at most once between two zeros of dF/dt or jumps
+        tau dq/dt + q = F: dq/dt is 0 at most once between two zeros of dF/dt or jumps; a power
+        turns where d(v i)/dt is 0, told apart by bounds of its rate and of the rate of that
 
     Both ends of the window and both sides of every jump are looked at; impulses are left out. Of
     equal extremes the earliest counts.
 
     Arguments:
         network: range with a heading row, as for FO_NETWORK; a network table
-        quantity: a voltage or a current, with a node or an element of the table;
+        quantity: what is asked for, with a node or an element of the table;
             "voltage at NODE", "voltage across NAME", "current through NAME" or "power in NAME"
         t_from: start of the window (s); any number
         t_to: end of the window (s), not before t_from; any number
         kind: largest, smallest, or largest magnitude (with its sign); "max", "min", "abs"
 
-    Result: value (V or A) and time (s), each in the broadcast shape of t_from and t_to.
+    Result: value (V, A or W) and time (s), each in the broadcast shape of t_from and t_to.
 
     Errors: #NUM! for t_to before t_from, or when too many turning points had to be told apart;
-    #N/A where the network before t = 0 leaves the quantity open; #VALUE! for a power and as for
-    FO_NETWORK_AT.
+    #N/A where the network before t = 0 leaves the quantity open; #VALUE! as for FO_NETWORK_AT.
 
     Assumes: linear, constant elements; at t = 0 charge and flux are conserved.
 
@@ -199,8 +195,7 @@ def network_peak(
 
     References: modified nodal analysis, superposition.
     """
-    response = _one_response(network, quantity)
-    track = Track(response, Stretches(sources_of(response)))
+    response = asked(network, quantity)
     begin, end = np.broadcast_arrays(t_from, t_to)
     found = Peak(np.zeros(begin.shape), np.zeros(begin.shape))
     undecided = np.zeros(begin.shape, bool)
@@ -209,12 +204,8 @@ def network_peak(
     for index in np.ndindex(begin.shape):
         if backward[index] or unknown[index]:
             continue
-        window = float(begin[index]), float(end[index])
         try:
-            if window[1] < 0:
-                one = Peak(response.before, window[0])
-            else:
-                one = peak_of(track.paths(window[0]), *window, kind, response.before)
+            one = _peak(response, float(begin[index]), float(end[index]), kind)
         except Undecided:
             undecided[index] = True
             continue
@@ -234,3 +225,12 @@ def network_peak(
         )
         .unless(undecided, DomainError, UNDECIDED)
     )
+
+
+def _peak(quantity: Response | Power, t_from: float, t_to: float, kind: str) -> Peak:
+    if isinstance(quantity, Power):
+        return power_peak(quantity, t_from, t_to, kind)
+    if t_to < 0:
+        return Peak(quantity.before, t_from)
+    track = Track(quantity, Stretches(sources_of(quantity)))
+    return peak_of(track.paths(t_from), t_from, t_to, kind, quantity.before)
