@@ -19,7 +19,7 @@ from tausheet.functions.network_elements import listed
 from tausheet.functions.network_paths import Stretch, Stretches, Track, sources_of
 from tausheet.functions.network_quantity import Response, current, voltage
 from tausheet.functions.network_table import NetworkTable, OneText
-from tausheet.functions.roots import Path
+from tausheet.functions.roots import Path, Undecided
 
 _CONTEXT = Context(
     prec=120, Emax=10**9, Emin=-(10**9), traps=[InvalidOperation, DivisionByZero, Overflow]
@@ -29,6 +29,7 @@ _SMALL = Decimal("1e-3")
 _ENOUGH = Decimal("1e-60")
 _STRETCHES = 2_000
 """Stretches between jumps of the sources that one window may hold."""
+_TOO_LONG = f"the window holds more than {_STRETCHES} jumps of the sources; enter a shorter one"
 _ZERO, _ONE = Decimal(0), Decimal(1)
 
 Complex = tuple[Decimal, Decimal]
@@ -166,9 +167,7 @@ class _Absorbed:
         begin, end = Decimal(max(t_from, 0.0)), Decimal(t_to)
         stretches = list(islice(self.stretches.between(begin, end), _STRETCHES + 1))
         if len(stretches) > _STRETCHES:
-            raise DomainError(
-                f"the window holds more than {_STRETCHES} jumps of the sources; enter a shorter one"
-            )
+            raise Undecided(_TOO_LONG)
         with localcontext(_CONTEXT):
             for stretch in stretches:
                 paths = [track.path(*stretch) for track in self.tracks]
@@ -183,7 +182,10 @@ class _Absorbed:
         if not any(impulses):
             return _ZERO
         if all(impulses) or any(any(weights[1:]) for weights in impulses):
-            raise NotAvailable("the energy has no end, since an impulse meets an impulse")
+            raise NotAvailable(
+                "the energy has no end, since an impulse meets an impulse; put a resistor where "
+                "it flows, or ask from after it on"
+            )
         late = _ends([track.path(*after) for track in self.tracks], t)
         mean = [(a + b) / 2 for a, b in zip(before, late, strict=True)]
         flux, charge = (Decimal(weights[0]) if weights else _ZERO for weights in impulses)
@@ -217,9 +219,9 @@ def network_energy(
 
     Result: energy (J), in the broadcast shape of t_from and t_to.
 
-    Errors: #NUM! for t_to before t_from; #N/A where the network before t = 0 leaves the power
-    open, or where voltage and current have an impulse at once; #VALUE! for an unknown element and
-    as for FO_NETWORK_AT.
+    Errors: #NUM! for t_to before t_from or a window of more than 2,000 jumps; #N/A where the
+    network before t = 0 leaves the power open, or where voltage and current have an impulse at
+    once; #VALUE! for an unknown element and as for FO_NETWORK_AT.
 
     Assumes: linear, constant elements; at t = 0 charge and flux are conserved.
 
@@ -242,12 +244,15 @@ def network_energy(
     absorbed = _Absorbed([voltage(network, index), current(network, index)])
     begin, end = np.broadcast_arrays(t_from, t_to)
     values, endless = np.zeros(begin.shape), np.zeros(begin.shape, bool)
+    too_long = endless.copy()
     sentence = ""
     for at in np.ndindex(begin.shape):
         if end[at] < begin[at]:
             continue
         try:
             values[at] = absorbed.energy(float(begin[at]), float(end[at]))
+        except Undecided:
+            too_long[at] = True
         except NotAvailable as error:
             endless[at], sentence = True, str(error)
     return (
@@ -257,5 +262,6 @@ def network_energy(
             DomainError,
             "t_to is {t_to}, before t_from, {t_from}; enter a t_to that is not before t_from",
         )
+        .unless(too_long, DomainError, _TOO_LONG)
         .unless(endless, NotAvailable, sentence)
     )

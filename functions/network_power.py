@@ -9,11 +9,10 @@ from itertools import islice
 
 from tausheet.functions.crossing import UNDECIDED
 from tausheet.functions.digits import ZERO
-from tausheet.functions.errors import DomainError
 from tausheet.functions.extremes import Peak
 from tausheet.functions.network_paths import Stretches, Track, sources_of
 from tausheet.functions.network_quantity import Power
-from tausheet.functions.roots import Forcing, Lag, Path
+from tausheet.functions.roots import Forcing, Lag, Path, Undecided
 
 Bounds = tuple[float, float]
 
@@ -116,7 +115,7 @@ class _Search:
             for a, b in ((left, middle), (middle, right)):
                 reach = _product(v.bounds(0, a, b), i.bounds(0, a, b))
                 heapq.heappush(windows, (-max(map(self.measure, reach)), a, b))
-        raise DomainError(UNDECIDED)
+        raise Undecided(UNDECIDED)
 
 
 def _one_sided(bounds: Bounds) -> bool:
@@ -155,9 +154,7 @@ def power_peak(power: Power, t_from: float, t_to: float, kind: str) -> Peak:
     begin, end = Decimal(max(t_from, 0.0)), Decimal(t_to)
     between = list(islice(stretches.between(begin, end), _STRETCHES + 1))
     if len(between) > _STRETCHES:
-        raise DomainError(
-            f"the window holds more than {_STRETCHES} jumps of the sources; enter a shorter one"
-        )
+        raise Undecided(UNDECIDED)
     for stretch in between:
         search.along(*(track.path(*stretch) for track in tracks))
     # the end itself counts with the value just after it

@@ -9,7 +9,6 @@ import numpy as np
 from tausheet.functions.arguments import Finite, Numbers, shown, words
 from tausheet.functions.catalogue import Answer, cell_function
 from tausheet.functions.crossing import (
-    NEVER,
     UNDECIDED,
     WAYS,
     Count,
@@ -150,7 +149,12 @@ def network_crossing(
     return (
         Answer(values)
         .unless(undecided, DomainError, UNDECIDED)
-        .unless(never, NotAvailable, NEVER.replace("y ", "the quantity ").replace(" y ", " it "))
+        .unless(
+            never,
+            NotAvailable,
+            "the quantity does not pass the level, {level}, so often after the time after, "
+            "{after}; enter a level that it passes, a smaller count or an earlier after",
+        )
     )
 
 
@@ -233,4 +237,6 @@ def _peak(quantity: Response | Power, t_from: float, t_to: float, kind: str) -> 
     if t_to < 0:
         return Peak(quantity.before, t_from)
     track = Track(quantity, Stretches(sources_of(quantity)))
-    return peak_of(track.paths(t_from), t_from, t_to, kind, quantity.before)
+    found = peak_of(track.paths(t_from), t_from, t_to, kind, quantity.before)
+    # a moment is a sum of doubles and may come out one step beside the window's end
+    return Peak(found.value, min(max(found.time, t_from), t_to))

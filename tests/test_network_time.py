@@ -19,7 +19,13 @@ from tausheet.functions import (
     peak,
     reason,
 )
-from tausheet.functions.errors import DomainError, InputError, NotAvailable, error_codes
+from tausheet.functions.errors import (
+    DomainError,
+    ErrorKind,
+    InputError,
+    NotAvailable,
+    error_codes,
+)
 
 HEADINGS = ["Name", "Kind", "From", "To", "Value", "Before", "Start", "Control"]
 HEADINGS += ["Shape", "A", "B", "C", "D", "E"]
@@ -313,3 +319,7 @@ def test_refusals() -> None:
     many = low_pass(("square", -5.0, 5.0, 1e-4, 0.5))
     with pytest.raises(DomainError, match="more than 2000 jumps of the sources"):
         network_energy(many, "R1", 0.0, 10.0)
+    some = network_energy(many, "R1", 0.0, [0.01, 10.0])
+    assert error_codes(some).tolist() == [0, ErrorKind.NUM.value]
+    with pytest.raises(DomainError, match="more turning points"):
+        network_peak(many, "power in R1", 0.0, 10.0)
