@@ -23,6 +23,8 @@ def main() -> int:
         "-q",
         "-o",
         "python_files=bench_*.py",
+        "-o",
+        "python_functions=bench_*",
     ]
     return subprocess.run([*command, *sys.argv[1:]], cwd=start.ROOT).returncode
 
