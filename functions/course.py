@@ -83,6 +83,40 @@ class Course:
             lambda s: self.value(origin + s),
         )
 
+    def quiet_after(self, level: float) -> float:
+        """A moment behind which y keeps its side of a level for ever; infinite when unknown."""
+        size = abs(self.initial) + abs(level)
+        rate, low, high, begun, longest = 0.0, 0.0, 0.0, 0.0, self.tau
+        for source in self.sources:
+            v, begins = source.values, source.start
+            ends = (v[0], v[0])  # what the forcing lies between when all has begun
+            if source.shape == "slope":
+                rate += v[0]
+                size += abs(v[0]) * (begins + self.tau)
+                ends = (0.0, 0.0)
+            elif source.shape == "square":
+                ends = (v[0], v[1])
+            elif source.shape == "sine":
+                ends = (-abs(v[0]), abs(v[0]))
+            elif source.shape in ("pulse", "decay"):
+                size += abs(v[0])
+                ends = (0.0, 0.0)
+            if source.shape in ("ramp", "pulse"):
+                begins += v[1]
+            if source.shape == "decay":
+                longest = max(longest, v[1])
+            size += max(map(abs, ends))
+            low, high, begun = low + min(ends), high + max(ends), max(begun, begins)
+        if rate:  # y is within `size` of rate x t
+            return max(begun, 1.01 * size / abs(rate))
+        gap = max(low - level, level - high)
+        if not gap > 1e-12 * size:
+            return math.inf
+        u = 2.0  # what is left of the start and of decays is below size (2 + u) exp(-u)
+        while size * (2 + u) * math.exp(-u) * (longest / self.tau) >= gap:
+            u += 1.0
+        return begun + u * longest
+
     @fifty_digits
     def repetition(self) -> tuple[Decimal, Decimal] | None:
         """From when on the forcing repeats and its period, None when it never does."""

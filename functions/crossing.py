@@ -43,10 +43,12 @@ def crossing_of(
     count: float = 1,
     after: float = 0.0,
     before: float | None = None,
+    quiet_after: float = math.inf,
 ) -> float | None:
     """The count-th moment behind `after` at which y passes the level; None when there is none.
 
     way: 1 rising, -1 falling, 0 either. before: the constant value of y until the first path.
+    quiet_after: a moment behind which y is known not to pass the level.
     """
     watch, wanted = _watch(before, level), Wanted(way, count, after)
     last: Lag | None = None
@@ -55,6 +57,8 @@ def crossing_of(
             cycle = Cycle(path.paths, level, path.period)
             first = cycle.number(after)
             return cycle.take(wanted, Watch() if first else watch, first)
+        if path.moment(0) > quiet_after:
+            return None
         last = follow(path, level, last)
         moment = wanted.take(along(last, after, watch))
         if moment is not None:
@@ -169,7 +173,8 @@ def crossing(
 
     def one(level: float, tau: float, initial: float, count: float, after: float) -> float | None:
         course = Course(sources, tau, initial)
-        return crossing_of(course.paths(after), level, way, count, after)
+        quiet = course.quiet_after(level)
+        return crossing_of(course.paths(after), level, way, count, after, quiet_after=quiet)
 
     if slow.size:
         values[slow], never[slow], undecided[slow] = each(one, *(c[slow] for c in columns))
