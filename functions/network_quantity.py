@@ -25,6 +25,7 @@ from tausheet.functions.network_shapes import (
     integral,
     integral_to_infinity,
     jump,
+    may_jump,
     scaled,
     settled,
     slope,
@@ -105,12 +106,14 @@ class Response:
 
     def impulsive(self, t: Array) -> NDArray[np.bool_]:
         """Where the quantity is an impulse."""
-        mask = np.zeros(np.shape(t), dtype=bool)
-        if not self.depth:
-            return mask
-        for index, moment in np.ndenumerate(t):
-            mask[index] = bool(self.impulses(float(moment)))
-        return mask
+        mask = np.asarray(t == 0) if self.struck else np.zeros(np.shape(t), dtype=bool)
+        for weighted in self.direct[1:]:
+            for _, source in weighted:
+                mask = mask | may_jump(t, source)
+        found: NDArray[np.bool_] = np.array(mask)
+        for index in map(tuple, np.argwhere(found)):
+            found[index] = bool(self.impulses(float(t[index])))
+        return found
 
     def final(self) -> float:
         """The value for t to infinity."""

@@ -8,6 +8,7 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from tausheet.functions.exact import Array
 from tausheet.functions.sources import Source, forcing
@@ -50,6 +51,18 @@ def jump(t: float, source: Source) -> float:
         if 0 < duty < 1 and phase in (0.0, duty * period):
             return low - high if phase else high - low
     return 0.0
+
+
+def may_jump(t: Array, source: Source) -> NDArray[np.bool_]:
+    """Where the source or its rate of change may jump: the moments worth a closer look."""
+    values, s = source.values, t - source.start
+    here = s == 0
+    if source.shape in ("ramp", "pulse"):
+        here = here | (s == values[1])
+    if source.shape == "square":
+        phase = np.fmod(s, values[2])
+        here = here | ((s > 0) & ((phase == 0) | (phase == values[3] * values[2])))
+    return np.asarray(here)
 
 
 def settled(source: Source) -> float | None:

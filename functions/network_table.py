@@ -337,7 +337,10 @@ class NetworkTable(Table):
             if known is not None:
                 _SEEN.move_to_end(key)  # type: ignore[arg-type]
                 return known
-        network = read_network(super().element(raw, parameter))
+        rows = super().element(raw, parameter)
+        if rows == [[None]]:
+            raise self.wrong(None, parameter, InputError)
+        network = read_network(rows)
         if key is not None:
             _SEEN[key] = network
             if len(_SEEN) > _SEEN_LIMIT:

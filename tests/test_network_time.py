@@ -10,6 +10,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from tausheet.addin.cells import call, plain_grid
 from tausheet.functions import (
     crossing,
     network_at,
@@ -323,3 +324,63 @@ def test_refusals() -> None:
     assert error_codes(some).tolist() == [0, ErrorKind.NUM.value]
     with pytest.raises(DomainError, match="more turning points"):
         network_peak(many, "power in R1", 0.0, 10.0)
+
+
+CALLS = {
+    "FO_NETWORK_AT": [("t", 1.0), ("network", None), ("quantity", "voltage at out")],
+    "FO_NETWORK_CROSSING": [
+        ("level", 1.0),
+        ("network", None),
+        ("quantity", "voltage at out"),
+        ("direction", "rising"),
+        ("count", 1.0),
+        ("after", 0.0),
+    ],
+    "FO_NETWORK_PEAK": [
+        ("network", None),
+        ("quantity", "voltage at out"),
+        ("t_from", 0.0),
+        ("t_to", 1.0),
+        ("kind", "min"),
+    ],
+    "FO_NETWORK_ENERGY": [("network", None), ("element", "R1"), ("t_from", 0.0), ("t_to", 1.0)],
+    "FO_NETWORK": [("network", None), ("what", "tau")],
+    "FO_EQUIVALENT": [
+        ("network", None),
+        ("from_node", "out"),
+        ("to_node", "ground"),
+        ("what", "voltage"),
+    ],
+}
+OPTIONAL = {"direction", "count", "after", "kind", "what"}
+TEXTS = {"quantity", "element", "from_node", "to_node", "direction", "kind", "what"}
+
+
+@pytest.mark.parametrize("name", CALLS)
+def test_each_argument_given_wrongly(name: str) -> None:
+    """The right error for each kind of slip, and a sentence that names the argument."""
+    good = [low_pass(("step", 5.0)) if a == "network" else value for a, value in CALLS[name]]
+    assert reason(name, *good) == ""
+    for place, (argument, _) in enumerate(CALLS[name]):
+        slips: list[tuple[Any, ErrorKind]] = [(ErrorKind.REF, ErrorKind.REF)]
+        if argument not in OPTIONAL:
+            slips += [(None, ErrorKind.VALUE), ("", ErrorKind.VALUE)]
+        if argument in TEXTS or argument == "network":
+            slips += [("wobble", ErrorKind.VALUE), ([["a", "b"]], ErrorKind.VALUE)]
+            slips += [] if argument in OPTIONAL else [(0.0, ErrorKind.VALUE)]
+        else:
+            slips += [
+                ("4 V", ErrorKind.VALUE),
+                (math.inf, ErrorKind.NUM),
+                (math.nan, ErrorKind.NUM),
+            ]
+        if argument == "count":
+            slips += [(0.0, ErrorKind.NUM), (1.5, ErrorKind.NUM), (-1.0, ErrorKind.NUM)]
+        for slip, kind in slips:
+            arguments = [*good[:place], slip, *good[place + 1 :]]
+            shown = plain_grid(call(name, arguments))
+            while isinstance(shown, list):
+                shown = shown[0]
+            assert shown is kind, (argument, slip)
+            if kind is not ErrorKind.REF:
+                assert argument in reason(name, *arguments), (argument, slip)
