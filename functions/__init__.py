@@ -15,6 +15,7 @@ from tausheet.functions.extremes import Peak, peak
 from tausheet.functions.fault import dc_offset, dc_worst, fault_current, fault_i2t, peak_factor
 from tausheet.functions.fit import Fit, FitFrom, fit, fit_from
 from tausheet.functions.frequency import corner_frequency, gain_db, noise_bandwidth, phase, tau_at
+from tausheet.functions.integrals import mean, rms
 from tausheet.functions.network import Equivalent, FirstOrder, equivalent, network
 from tausheet.functions.network_energy import network_energy
 from tausheet.functions.network_response import network_at, network_crossing, network_peak
@@ -70,6 +71,7 @@ __all__ = [
     "gain_db",
     "i2t",
     "in_unit",
+    "mean",
     "natural",
     "network",
     "network_at",
@@ -92,6 +94,7 @@ __all__ = [
     "rise_time",
     "rkm",
     "rkm_text",
+    "rms",
     "settling_time",
     "si",
     "sine",

@@ -2,10 +2,8 @@
 
 from __future__ import annotations
 
-import math
-from collections import defaultdict
 from collections.abc import Sequence
-from decimal import Context, Decimal, DivisionByZero, InvalidOperation, Overflow, localcontext
+from decimal import Decimal, localcontext
 from itertools import islice
 from typing import Annotated, Any
 
@@ -13,131 +11,17 @@ import numpy as np
 
 from tausheet.functions.arguments import Finite, Numbers
 from tausheet.functions.catalogue import Answer, cell_function
-from tausheet.functions.digits import TURN, sine_and_cosine
 from tausheet.functions.errors import DomainError, InputError, NotAvailable
+from tausheet.functions.motion import CONTEXT, ZERO, product_integral
 from tausheet.functions.network_elements import listed
 from tausheet.functions.network_paths import Stretch, Stretches, Track, sources_of
 from tausheet.functions.network_quantity import Response, current, voltage
 from tausheet.functions.network_table import NetworkTable, OneText
 from tausheet.functions.roots import Path, Undecided
 
-_CONTEXT = Context(
-    prec=120, Emax=10**9, Emin=-(10**9), traps=[InvalidOperation, DivisionByZero, Overflow]
-)
-"""Where two time constants almost agree half of these digits cancel."""
-_SMALL = Decimal("1e-3")
-_ENOUGH = Decimal("1e-60")
 _STRETCHES = 2_000
 """Stretches between jumps of the sources that one window may hold."""
 _TOO_LONG = f"the window holds more than {_STRETCHES} jumps of the sources; enter a shorter one"
-_ZERO, _ONE = Decimal(0), Decimal(1)
-
-Complex = tuple[Decimal, Decimal]
-Term = tuple[int, Complex]
-"""Power of s and rate: s^n exp(rate s)."""
-Sum = dict[Term, Complex]
-"""A function of s as a sum of terms with complex factors; sines come in conjugate pairs."""
-
-
-def _times(a: Complex, b: Complex) -> Complex:
-    return a[0] * b[0] - a[1] * b[1], a[0] * b[1] + a[1] * b[0]
-
-
-def _over(a: Complex, b: Complex) -> Complex:
-    size = b[0] * b[0] + b[1] * b[1]
-    real, imaginary = _times(a, (b[0], -b[1]))
-    return real / size, imaginary / size
-
-
-def _put(terms: Sum, term: Term, factor: Complex) -> None:
-    old = terms.get(term, (_ZERO, _ZERO))
-    terms[term] = (old[0] + factor[0], old[1] + factor[1])
-
-
-def _forcing(path: Path) -> Sum:
-    terms: Sum = {}
-    forcing = path.forcing
-    for power, value in enumerate((forcing.a, forcing.b, forcing.c)):
-        if value:
-            _put(terms, (power, (_ZERO, _ZERO)), (Decimal(value), _ZERO))
-    for size, frequency, phase in forcing.sines:
-        sine, cosine = sine_and_cosine(Decimal(phase))
-        rate, half = TURN * Decimal(frequency), Decimal(size) / 2
-        # A sin(ws + p) = A/2 (sin p - i cos p) exp(iws) + its conjugate
-        _put(terms, (0, (_ZERO, rate)), (half * sine, -half * cosine))
-        _put(terms, (0, (_ZERO, -rate)), (half * sine, half * cosine))
-    for size, own in forcing.decays:
-        _put(terms, (0, (-_ONE / Decimal(own), _ZERO)), (Decimal(size), _ZERO))
-    return terms
-
-
-def _motion(path: Path) -> Sum:
-    """The quantity on a path: q' + k q = k F, with q' = F when tau is infinite."""
-    k = _ZERO if math.isinf(path.tau) else _ONE / Decimal(path.tau)
-    scale = k or _ONE
-    terms: Sum = {}
-    for (power, rate), factor in _forcing(path).items():
-        shifted = (rate[0] + k, rate[1])
-        part = (factor[0] * scale, factor[1] * scale)
-        if shifted == (_ZERO, _ZERO):
-            _put(terms, (power + 1, rate), (part[0] / (power + 1), part[1] / (power + 1)))
-            continue
-        # p' + a p = c s^n: p = c (s^n / a - n s^(n-1) / a^2 + ...)
-        for left in range(power, -1, -1):
-            part = _over(part, shifted)
-            _put(terms, (left, rate), part)
-            part = (-left * part[0], -left * part[1])
-    assert path.exact is not None
-    start = path.exact(_ZERO) - sum((f[0] for (n, _), f in terms.items() if n == 0), _ZERO)
-    _put(terms, (0, (-k, _ZERO)), (start, _ZERO))
-    return terms
-
-
-def _exponential(rate: Complex, s: Decimal) -> Complex:
-    size = (rate[0] * s).exp()
-    if not rate[1]:
-        return size, _ZERO
-    sine, cosine = sine_and_cosine(rate[1] * s / TURN)
-    return size * cosine, size * sine
-
-
-def _integral(power: int, rate: Complex, end: Complex, s: Decimal) -> Complex:
-    """Integral of s^n exp(rate s) from 0 to s; end = exp(rate s)."""
-    if rate == (_ZERO, _ZERO):
-        return s ** (power + 1) / (power + 1), _ZERO
-    x = (rate[0] * s, rate[1] * s)
-    if max(abs(x[0]), abs(x[1])) < _SMALL:
-        total, term, k = (_ZERO, _ZERO), (_ONE, _ZERO), 0
-        while max(abs(term[0]), abs(term[1])) > _ENOUGH:
-            total = (total[0] + term[0] / (power + k + 1), total[1] + term[1] / (power + k + 1))
-            k += 1
-            term = _times(term, (x[0] / k, x[1] / k))
-        scale = s ** (power + 1)
-        return scale * total[0], scale * total[1]
-    value = _over((end[0] - _ONE, end[1]), rate)
-    for n in range(1, power + 1):
-        raised = s**n
-        value = _over((raised * end[0] - n * value[0], raised * end[1] - n * value[1]), rate)
-    return value
-
-
-def product_integral(a: Path, b: Path, length: Decimal) -> Decimal:
-    """Integral of the product of two quantities on their common stretch, in closed form."""
-    with localcontext(_CONTEXT):
-        first, second = _motion(a), _motion(b)
-        ends = {rate: _exponential(rate, length) for _, rate in {**first, **second}}
-        product: defaultdict[Term, Complex] = defaultdict(lambda: (_ZERO, _ZERO))
-        grown: dict[Complex, Complex] = {}
-        for (n, rate), factor in first.items():
-            for (m, other), weight in second.items():
-                both = (rate[0] + other[0], rate[1] + other[1])
-                _put(product, (n + m, both), _times(factor, weight))
-                grown[both] = _times(ends[rate], ends[other])
-        total = _ZERO
-        for (power, rate), factor in product.items():
-            part = _integral(power, rate, grown[rate], length)
-            total += _times(factor, part)[0]
-        return total
 
 
 class _Absorbed:
@@ -151,7 +35,7 @@ class _Absorbed:
 
     def energy(self, t_from: float, t_to: float) -> float:
         """From just after t_from to just after t_to."""
-        total = _ZERO
+        total = ZERO
         before = [r.before for r in self.responses]
         if t_from < 0:
             if before[0] is None or before[1] is None:
@@ -160,15 +44,15 @@ class _Absorbed:
                     "a t_from of 0 or later"
                 )
             rest = Decimal(before[0]) * Decimal(before[1])
-            total += rest * (min(Decimal(t_to), _ZERO) - Decimal(t_from))
+            total += rest * (min(Decimal(t_to), ZERO) - Decimal(t_from))
             if t_to < 0:
                 return float(total)
-            total += self._strike(None, [Decimal(b or 0.0) for b in before], _ZERO)
+            total += self._strike(None, [Decimal(b or 0.0) for b in before], ZERO)
         begin, end = Decimal(max(t_from, 0.0)), Decimal(t_to)
         stretches = list(islice(self.stretches.between(begin, end), _STRETCHES + 1))
         if len(stretches) > _STRETCHES:
             raise Undecided(_TOO_LONG)
-        with localcontext(_CONTEXT):
+        with localcontext(CONTEXT):
             for stretch in stretches:
                 paths = [track.path(*stretch) for track in self.tracks]
                 total += product_integral(paths[0], paths[1], stretch[1] - stretch[0])
@@ -180,7 +64,7 @@ class _Absorbed:
         after = self.stretches.after(t)
         impulses = [track.impulses(last, after) for track in self.tracks]
         if not any(impulses):
-            return _ZERO
+            return ZERO
         if all(impulses) or any(any(weights[1:]) for weights in impulses):
             raise NotAvailable(
                 "the energy has no end, since an impulse meets an impulse; put a resistor where "
@@ -188,7 +72,7 @@ class _Absorbed:
             )
         late = _ends([track.path(*after) for track in self.tracks], t)
         mean = [(a + b) / 2 for a, b in zip(before, late, strict=True)]
-        flux, charge = (Decimal(weights[0]) if weights else _ZERO for weights in impulses)
+        flux, charge = (Decimal(weights[0]) if weights else ZERO for weights in impulses)
         return charge * mean[0] + flux * mean[1]
 
 
