@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 import random
 from dataclasses import dataclass
+from itertools import pairwise
 
 import pytest
 from mpmath import iv, mp, mpf
@@ -79,7 +80,7 @@ def pieces_of(rows, tau, initial, horizon):
     tau, y = mpf(tau), mpf(initial)
     pieces = []
     times = changes(rows, horizon)
-    for t0, t1 in zip(times, times[1:], strict=False):
+    for t0, t1 in pairwise(times):
         a, b, falls, sines = mpf(0), mpf(0), [], []
         middle = (t0 + t1) / 2
         for shape, values, start in rows:
