@@ -201,6 +201,10 @@ def _cases_of(function: CellFunction) -> Iterator[Case]:
             yield from _bad_tables(name, base, spot)
         elif spec.elementwise:
             yield from _ranges(function, base, spot, value)
+        if not function.variadic:
+            for what, bad in BAD[1:4]:
+                asked = (name, *_with(base, spot, bad))
+                yield Case("FO_REASON", f"{name}, argument {spot + 1}: {what}", asked)
     yield from _tables_of_results(function, base)
     if len(base) > 1:
         yield Case(name, "nothing given", ())

@@ -157,3 +157,19 @@ def test_libreoffice_agrees_with_python(workbook: tuple[Path, list[Placed]]) -> 
             sheet = values[one.case.function]
             found = [sheet[address] for line in one.addresses for address in line]
             assert all(isinstance(value, ErrorKind) for value in found), one.case
+
+
+def test_what_libreoffice_cannot_tell(tmp_path: Path) -> None:
+    """A single empty cell by its address counts as 0; of several error values it picks one."""
+    book = Workbook()
+    sheet = book.worksheets[0]
+    sheet["A1"], sheet["A2"] = "=NA()", "=1/0"
+    formulas = ["FO_STEP(1,Z9,0,5)", "FO_STEP(1,Z9:Z9,0,5)", "FO_STEP(A1,A2,0,5)"]
+    for row, formula in enumerate(formulas, start=1):
+        sheet.cell(row, 2, f"={formula}")
+    book.save(tmp_path / "blank.xlsx")
+    with Calc() as calc:
+        found = calc.compute(tmp_path / "blank.xlsx")["Sheet"]
+    assert found["B1"] is ErrorKind.NUM
+    assert found["B2"] is ErrorKind.VALUE
+    assert found["B3"] in (ErrorKind.NA, ErrorKind.DIV0)

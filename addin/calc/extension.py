@@ -26,13 +26,20 @@ def python_environment() -> dict[str, Any]:
     """What LibreOffice must know of this Python: where its packages are, and its binary form."""
     folders = [*site.getsitepackages(), site.getusersitepackages()]
     return {
-        "executable": sys.executable,
+        "executable": executable(),
         "version": ".".join(map(str, sys.version_info[:3])),
         "binary": inside.binary_form(sysconfig.get_config_var),
         "folders": [folder for folder in folders if folder in sys.path],
         "functions": [entry.name for entry in interface.functions()],
         "texts": [entry.name for entry in interface.functions() if entry.texts],
     }
+
+
+def executable() -> str:
+    """This Python by one name, whichever of its names it was started by."""
+    started = Path(sys.executable)
+    plain = started.with_name("python" + started.suffix * (started.suffix == ".exe"))
+    return str(plain if plain.exists() else started)
 
 
 def summary() -> str:
@@ -70,7 +77,7 @@ def _summary(content: Mapping[str, bytes]) -> str:
         digest.update(name.encode() + content[name])
     return (
         f"{len(interface.functions())} cell functions for first-order responses, "
-        f"computed by {sys.executable}; {digest.hexdigest()[:8]}."
+        f"computed by {executable()}; {digest.hexdigest()[:8]}."
     )
 
 

@@ -14,6 +14,7 @@ from tausheet.addin.calc.inside import names
 from tausheet.functions.errors import TausheetError
 
 _TIME_LIMIT = 180.0
+_FOR_ALL = "for every user of this machine"
 
 
 class InstallationError(TausheetError):
@@ -42,9 +43,12 @@ def uninstall(options: Sequence[str] = ()) -> str:
     return f"The cell functions are removed from LibreOffice {_for_whom()}."
 
 
-def installed(options: Sequence[str] = ()) -> str | None:
-    """What the installed extension says of itself; None when there is none."""
-    listed = _unopkg("list", *options)
+def installed(options: Sequence[str] = (), *, for_all: bool = False) -> str | None:
+    """What the installed extension says of itself; None when there is none.
+
+    for_all: look where it is installed for every user, also when this is one of them.
+    """
+    listed = _unopkg("list", *(["--shared"] if for_all and not _root() else []), *options)
     ours = re.search(
         rf"^Identifier: {re.escape(names.IDENTIFIER)}$.*?^  Description: ([^\n]*)$",
         listed,
@@ -64,13 +68,17 @@ def status(options: Sequence[str] = ()) -> list[str]:
         f"LibreOffice: {office.soffice}, with Python {office.python_version}; "
         "works without a window (--engine calc, pdf)."
     ]
-    where = f"Cell functions in LibreOffice {_for_whom()}"
+    where = _for_whom()
+    if there is None and not _root():
+        there = installed(options, for_all=True)
+        where = _FOR_ALL if there else where
+    line = f"Cell functions in LibreOffice {where}: "
     if there is None:
-        lines.append(f"{where}: not installed; run tausheet install calc.")
+        lines.append(f"{line}not installed; run tausheet install calc.")
     elif there != ours:
-        lines.append(f"{where}: another tausheet is installed ({there}) Run tausheet install calc.")
+        lines.append(f"{line}another tausheet is installed ({there}) Run tausheet install calc.")
     else:
-        lines.append(f"{where}: installed.")
+        lines.append(f"{line}installed.")
     slower = _mismatch(office)
     return [*lines, f"{slower}."] if slower else lines
 
@@ -80,18 +88,18 @@ def _mismatch(office: libreoffice.Office) -> str:
     return inside.mismatch(recorded, office.python_version, office.python_binary)
 
 
-def _shared() -> bool:
+def _root() -> bool:
     # LibreOffice refuses an installation for root alone
     return hasattr(os, "geteuid") and os.geteuid() == 0
 
 
 def _for_whom() -> str:
-    return "for every user of this machine" if _shared() else "for this user"
+    return _FOR_ALL if _root() else "for this user"
 
 
 def _unopkg(command: str, *arguments: str) -> str:
     program = str(libreoffice.find().unopkg)
-    scope = ["--shared"] if _shared() else []
+    scope = ["--shared"] if _root() else []
     try:
         done = subprocess.run(
             [program, command, *scope, *arguments],
