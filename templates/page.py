@@ -26,6 +26,7 @@ class Page:
     def down(self, points: float) -> int:
         """Start a row of that height; its number."""
         self.row += 1
+        points = round(points / style.PIXEL_POINTS) * style.PIXEL_POINTS
         self.worksheet.row_dimensions[self.row].height = points
         self._left -= points
         return self.row

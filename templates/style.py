@@ -35,7 +35,10 @@ TITLE_ROWS = 5
 PAGE_POINTS = 708.0
 """Height used of a page: what Letter leaves between its margins, with a little in reserve."""
 
-MARGINS = {"left": 0.55, "right": 0.55, "top": 0.5, "bottom": 0.5, "header": 0.25, "footer": 0.25}
+PIXEL_POINTS = 0.75
+"""Rows are whole pixels high, since a spreadsheet rounds them to that."""
+
+MARGINS = {"left": 0.45, "right": 0.45, "top": 0.5, "bottom": 0.5, "header": 0.25, "footer": 0.25}
 
 RELATIVE = '[<-99.995]"< -9999 %";[<0]-0.0%;0.0%'
 """A share. Calc drops the sign of a number that falls into a section after a condition."""

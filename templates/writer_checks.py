@@ -225,7 +225,10 @@ def _warnings(page: Page, book: Book) -> None:
     """The named warnings: hazards that the numbers show, whatever the verdict."""
     page.keep(50)
     row = page.down(20)
-    page.text(row, "A:H", "Named warnings", style.font(9, bold=True), vertical="bottom")
+    page.text(row, "A:F", "Named warnings", style.font(9, bold=True), vertical="bottom")
+    page.text(row, "G", "shown", style.font(7.5, colour=style.QUIET), "right", "bottom")
+    page.text(row, "H", '=COUNTIF(warning_results,"WARNING")', style.font(9), "center", "bottom")
+    book.define("warnings_shown", page.worksheet, f"H{row}")
     page.frame(row, "A:H", style.RULE)
     first = page.row + 1
     for hazard in hazards(book):
@@ -233,10 +236,6 @@ def _warnings(page: Page, book: Book) -> None:
     cells = f"H{first}:H{page.row}"
     book.define("warning_results", page.worksheet, *cells.split(":"))
     book.colour_words(cells, {"WARNING": (style.WASH, style.HEED)})
-    row = page.down(15)
-    page.text(row, "A:E", "warnings shown", style.font(8, colour=style.QUIET), "right")
-    page.text(row, "F", '=COUNTIF(warning_results,"WARNING")', horizontal="right")
-    book.define("warnings_shown", page.worksheet, f"F{row}")
 
 
 def _hazard(page: Page, book: Book, hazard: Hazard) -> None:
