@@ -75,8 +75,9 @@ def network(
     (tau of an integrator, final under a forcing that never settles). "order" alone is given
     whatever it is.
 
-    Assumes: linear, constant elements; at t = 0 charge and flux are conserved. Names and nodes
-    are the same in capitals and small letters.
+    Assumes: linear, constant elements. Until t = 0 stores with a Start hold it and all others
+    have settled; at t = 0 charge and flux are conserved, so a store whose value changes there
+    keeps its charge or flux. Names and nodes are the same in capitals and small letters.
 
     Example:
         >>> rows = [["Name", "Kind", "From", "To", "Value", "Before"],

@@ -66,7 +66,8 @@ def add(row: Row, factor: Decimal, other: Row) -> Row:
         term = factor * coefficient
         old = row.get(column)
         if old is None:
-            row[column] = term
+            if term:
+                row[column] = term
             continue
         new = old + term
         if new and new.adjusted() > old.adjusted() - _CANCELLED:

@@ -36,6 +36,13 @@ class Before:
                 rows.append(add(row, -_ONE, {tableau.input(CONSTANT): exact(start)}))
         self._substitutions, left = eliminate(rows, unknowns)
         self.contradicts = any(left)
+        self._settle(unknowns)
+
+    def _settle(self, unknowns: list[int]) -> None:
+        """A store with a Start has settled too, where that does not contradict its Start."""
+        for store in self.tableau.stores:
+            rest = substitute({self.tableau.dual(store): _ONE}, self._substitutions)
+            self._substitutions += eliminate([rest], rest.keys() & set(unknowns))[0]
 
     def value(self, expression: Row) -> Decimal | None:
         """A quantity until t = 0; None when the network does not determine it."""

@@ -244,6 +244,26 @@ def test_a_capacitor_across_a_ramp_takes_c_dv_dt() -> None:
     assert network_at(3.0, rows, "current through C1") == 0.0
 
 
+def test_op_amp_differentiator_before_a_low_pass() -> None:
+    """-R C dv/dt of a 50 Hz sine, then 1 k and 1 uF; the input capacitor's Start is redundant."""
+    rows = table(
+        one("V1", "voltage source", "ground", "in", 0.0, shape=("sine", 1.0, 50.0)),
+        one("C1", "capacitor", "in", "minus", 1e-6, start=0.0),
+        one("R1", "resistor", "minus", "out", 1e4),
+        one("U1", "op-amp", "ground", "out", control="ground minus"),
+        one("R2", "resistor", "out", "p", 1e3),
+        one("C2", "capacitor", "p", "ground", 1e-6),
+        one("E1", "voltage-controlled voltage source", "ground", "e", 0.0, control="out p"),
+        one("RE", "resistor", "e", "ground", 1.0),
+    )
+    assert network(rows, "tau") == pytest.approx(1e-3)
+    assert network(rows, "initial") == 0.0
+    t = np.linspace(0.0, 0.02, 9)
+    expected = -1e-2 * 100 * math.pi * np.cos(100 * math.pi * t)
+    np.testing.assert_allclose(network_at(t, rows, "voltage at out"), expected, atol=1e-13)
+    assert network_at(0.005, rows, "voltage at e") == 0.0
+
+
 def test_controlled_sources() -> None:
     """1 mF into 100 ohm; a v-c current source of 2.5 mS across it adds 400 ohm in parallel."""
     rows = table(
