@@ -67,7 +67,7 @@ def fraction_of_product(a: Any, b: Any) -> Array:
     # with an exponent of 110 both parts are whole numbers already
     exponent = np.minimum(a_exponent + b_exponent, 110)
     product, error = np.ldexp(product, exponent), np.ldexp(error, exponent)
-    rest = (product - np.rint(product)) + (error - np.rint(error))
+    rest = (product - np.rint(product)) + error
     result: Array = np.asarray(rest - np.rint(rest))
     return result
 
