@@ -191,7 +191,7 @@ def test_array_formulas_agree_with_libreoffice(tmp_path: Path) -> None:
             ("1:5", "=Z6:Z9+1"),
             ("1:3", "=5"),
             ("1:3", "=FO_TAU_RC(2,Z21:Z23^2)"),
-            ("1:3", "=Z6:Z7&\"x\""),
+            ("1:3", '=Z6:Z7&"x"'),
             ("1:4", "=IFERROR(1/Z6:Z9,0)"),
             ("1:2", "=SUM(Z6:Z9*2)"),
         ],
