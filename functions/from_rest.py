@@ -8,6 +8,7 @@ equal or near to tau, a ramp much shorter than tau, a million periods.
 
 from __future__ import annotations
 
+from functools import reduce
 from typing import Any
 
 import numpy as np
@@ -22,6 +23,13 @@ from tausheet.functions.exact import (
 
 _STILL = 1e-17
 """Share of tau below which a period moves y by less than a rounding."""
+
+
+def blend(*levels_and_shares: tuple[Array, Array]) -> Array:
+    """Levels times shares that add up to 1: never outside the levels, though shares are rounded."""
+    levels = [level for level, _ in levels_and_shares]
+    total = sum(level * share for level, share in levels_and_shares)
+    return np.clip(total, reduce(np.minimum, levels), reduce(np.maximum, levels))
 
 
 def lag(u: Any) -> Array:

@@ -3,9 +3,6 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
-from functools import reduce
-from typing import Any
 
 import numpy as np
 
@@ -16,9 +13,11 @@ from tausheet.functions.arguments import (
     Numbers,
     Positive,
 )
+from tausheet.functions.blocks import in_blocks
 from tausheet.functions.catalogue import cell_function
 from tausheet.functions.exact import Array
 from tausheet.functions.from_rest import (
+    blend,
     decay_share,
     fall_and_lag,
     pulse_shares,
@@ -26,27 +25,6 @@ from tausheet.functions.from_rest import (
     sine_share,
     square_shares,
 )
-
-_BLOCK = 32768
-"""Elements worked on at a time, so that what lies between stays in the processor's cache."""
-
-
-def _in_blocks(compute: Callable[..., None], *arguments: Any) -> Array:
-    """An element-wise computation, in blocks where its arguments are long columns.
-
-    `compute` puts its result into its first argument.
-    """
-    shape = np.broadcast_shapes(*(np.shape(a) for a in arguments))
-    out = np.empty(shape)
-    if out.size <= _BLOCK or any(np.shape(a) not in ((), shape) for a in arguments):
-        compute(out, *arguments)
-        return out
-    whole = out.reshape(-1)
-    flat = [np.asarray(a) if np.shape(a) == () else np.asarray(a).ravel() for a in arguments]
-    for start in range(0, out.size, _BLOCK):
-        part = slice(start, start + _BLOCK)
-        compute(whole[part], *(a if a.ndim == 0 else a[part] for a in flat))
-    return out
 
 
 def _step_scalar(
@@ -96,7 +74,7 @@ def natural(t: Finite, tau: Positive, initial: Finite) -> Numbers:
 
     References: closed form of tau dy/dt + y = 0.
     """
-    return _in_blocks(_natural, t, tau, initial)
+    return in_blocks(_natural, t, tau, initial)
 
 
 def _natural(out: Array, t: Array, tau: Array, initial: Array) -> None:
@@ -140,7 +118,7 @@ def _step_response(t: Array, tau: Array, initial: Array, final: Array) -> Array:
     fall = initial - final
     if np.isinf(fall).any():
         return 2 * _step_response(t, tau, initial / 2, final / 2)
-    return _in_blocks(_step, t, -tau, initial, final, fall)
+    return in_blocks(_step, t, -tau, initial, final, fall)
 
 
 def _step(out: Array, t: Array, less_tau: Array, initial: Array, final: Array, fall: Array) -> None:
@@ -154,13 +132,6 @@ def _step(out: Array, t: Array, less_tau: Array, initial: Array, final: Array, f
     np.add(out, final, out=out)
     if early is not None:
         np.copyto(out, soon, where=early)
-
-
-def _blend(*levels_and_shares: tuple[Array, Array]) -> Array:
-    """Levels times shares that add up to 1: never outside the levels, though shares are rounded."""
-    levels = [level for level, _ in levels_and_shares]
-    total = sum(level * share for level, share in levels_and_shares)
-    return np.clip(total, reduce(np.minimum, levels), reduce(np.maximum, levels))
 
 
 @cell_function("FO_RAMP", "Response")
@@ -196,7 +167,7 @@ def ramp(
 
     References: closed form of tau dy/dt + y = x.
     """
-    return _in_blocks(_ramp, t, tau, initial, level_from, level_to, duration)
+    return in_blocks(_ramp, t, tau, initial, level_from, level_to, duration)
 
 
 def _ramp(
@@ -204,7 +175,7 @@ def _ramp(
 ) -> None:
     t = np.maximum(t, 0.0)
     of_start, of_end = ramp_shares(t, tau, length)
-    out[...] = _blend((initial, np.exp(-t / tau)), (start, of_start), (end, of_end))
+    out[...] = blend((initial, np.exp(-t / tau)), (start, of_start), (end, of_end))
 
 
 @cell_function("FO_SINE", "Response")
@@ -242,7 +213,7 @@ def sine(
 
     References: closed form of tau dy/dt + y = x.
     """
-    return _in_blocks(_sine, t, tau, initial, amplitude, frequency, phase, offset)
+    return in_blocks(_sine, t, tau, initial, amplitude, frequency, phase, offset)
 
 
 def _sine(
@@ -258,7 +229,7 @@ def _sine(
     t = np.maximum(t, 0.0)
     fall, rest = fall_and_lag(t, tau)
     swing = amplitude * sine_share(t, tau, frequency, phase)
-    out[...] = _blend((initial, fall), (offset, rest)) + swing
+    out[...] = blend((initial, fall), (offset, rest)) + swing
 
 
 @cell_function("FO_DECAY", "Response")
@@ -294,7 +265,7 @@ def decay(
 
     References: closed form of tau dy/dt + y = x.
     """
-    return _in_blocks(_decay, t, tau, initial, amplitude, source_tau, offset)
+    return in_blocks(_decay, t, tau, initial, amplitude, source_tau, offset)
 
 
 def _decay(
@@ -309,7 +280,7 @@ def _decay(
     t = np.maximum(t, 0.0)
     fall, rest = fall_and_lag(t, tau)
     share = decay_share(t, tau, source_tau)
-    out[...] = _blend((initial, fall), (offset, rest)) + amplitude * share
+    out[...] = blend((initial, fall), (offset, rest)) + amplitude * share
 
 
 @cell_function("FO_PULSE", "Response")
@@ -347,7 +318,7 @@ def pulse(
 
     References: closed form of tau dy/dt + y = x.
     """
-    return _in_blocks(_pulse, t, tau, initial, resting, level, duration, delay)
+    return in_blocks(_pulse, t, tau, initial, resting, level, duration, delay)
 
 
 def _pulse(
@@ -362,7 +333,7 @@ def _pulse(
 ) -> None:
     t = np.maximum(t, 0.0)
     of_resting, of_level = pulse_shares(t, tau, duration, delay)
-    out[...] = _blend((initial, np.exp(-t / tau)), (resting, of_resting), (level, of_level))
+    out[...] = blend((initial, np.exp(-t / tau)), (resting, of_resting), (level, of_level))
 
 
 @cell_function("FO_SQUARE", "Response")
@@ -400,7 +371,7 @@ def square(
 
     References: closed form of tau dy/dt + y = x, geometric series over the periods.
     """
-    return _in_blocks(_square, t, tau, initial, low, high, period, duty)
+    return in_blocks(_square, t, tau, initial, low, high, period, duty)
 
 
 def _square(
@@ -415,4 +386,4 @@ def _square(
 ) -> None:
     t = np.maximum(t, 0.0)
     of_low, of_high = square_shares(t, tau, period, duty)
-    out[...] = _blend((initial, np.exp(-t / tau)), (low, of_low), (high, of_high))
+    out[...] = blend((initial, np.exp(-t / tau)), (low, of_low), (high, of_high))
