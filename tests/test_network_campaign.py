@@ -362,10 +362,11 @@ class Maker:
         return shapes[int(self.rng.integers(len(shapes)))]
 
     def make(self) -> Circuit:
-        for _ in range(int(self.rng.integers(1, 6))):
+        most = 12 if self.often(0.3) else 5
+        for _ in range(int(self.rng.integers(1, most + 1))):
             a = self.any_node()
             self.resistor(a, self.c.node())
-        for _ in range(int(self.rng.integers(0, 4))):
+        for _ in range(int(self.rng.integers(0, most))):
             if len(self.c.nodes) > 2:
                 a = self.any_node()
                 self.resistor(a, self.any_node(a))

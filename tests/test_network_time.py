@@ -291,6 +291,35 @@ def test_energy_balance(
     assert stored[0] - held == pytest.approx(c * (late**2 - start**2) / 2, abs=1e-11 * size)
 
 
+@settings(max_examples=40, deadline=None)
+@given(shapes(), shapes(), positive, positive, positive, positive, st.booleans())
+def test_superposition(
+    first: tuple[Any, ...],
+    second: tuple[Any, ...],
+    r1: float,
+    r2: float,
+    value: float,
+    t: float,
+    coil: bool,
+) -> None:
+    """Both sources together do what each does alone, added up: common practice (linearity)."""
+
+    def rows(*shaped: tuple[Any, ...]) -> list[list[Any]]:
+        return table(
+            ("V1", "voltage source", "ground", "a", 0.0, *[None] * 3, *shaped[0]),
+            ("R1", "resistor", "a", "b", r1),
+            ("I1", "current source", "ground", "b", 0.0, *[None] * 3, *shaped[1]),
+            ("R2", "resistor", "b", "ground", r2),
+            ("X1", "inductor" if coil else "capacitor", "b", "ground", value),
+        )
+
+    for quantity in ("voltage at b", "current through X1", "current through V1"):
+        parts = [network_at(t, rows(*case), quantity) for case in ((first, ()), ((), second))]
+        size = max(map(abs, parts)) + 1e-9
+        together = network_at(t, rows(first, second), quantity)
+        assert together == pytest.approx(sum(parts), abs=1e-11 * size)
+
+
 def test_refusals() -> None:
     rows = low_pass(("step", 5.0, 0.2))
     with pytest.raises(InputError, match="a power; enter a voltage or a current"):
