@@ -9,9 +9,8 @@ import math
 from collections.abc import Iterator, Sequence
 from dataclasses import replace
 from decimal import Decimal
-from fractions import Fraction
 
-from tausheet.functions.digits import ZERO, fall, fifty_digits
+from tausheet.functions.digits import ZERO, fall, fifty_digits, span
 from tausheet.functions.paths import DEAD, Repeating, common_period
 from tausheet.functions.roots import Forcing, Path
 from tausheet.functions.shapes import NEVER, SHAPES
@@ -76,7 +75,7 @@ class Course:
         forcing = Forcing(math.fsum(levels), b, 0.0, tuple(sines), tuple(decays))
         return Path(
             origin,
-            float(end - origin),
+            span(origin, end),
             self.tau,
             forcing,
             tuple(levels),
@@ -120,7 +119,7 @@ class Course:
     @fifty_digits
     def repetition(self) -> tuple[Decimal, Decimal] | None:
         """From when on the forcing repeats and its period, None when it never does."""
-        begin, periods = ZERO, []
+        begin, periods, frequencies = ZERO, [], []
         for source, shape, start in zip(self.sources, self._shapes, self._starts, strict=True):
             values, last = source.values, start
             if source.shape == "slope" and values[0]:
@@ -130,11 +129,11 @@ class Course:
             if source.shape == "decay" and values[0]:
                 last += Decimal(values[1]) * DEAD
             if source.shape == "sine" and values[0] and values[1]:
-                periods.append(1 / Fraction(values[1]))
+                frequencies.append(values[1])
             if source.shape == "square" and shape.next_change(ZERO) < NEVER:
-                periods.append(Fraction(values[2]))
+                periods.append(values[2])
             begin = max(begin, last)
-        period = common_period(periods) if periods else None
+        period = common_period(periods, frequencies) if periods or frequencies else None
         return None if period is None else (begin, period)
 
     def _between(self, origin: Decimal, end: Decimal) -> Iterator[Path]:

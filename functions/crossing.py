@@ -26,6 +26,9 @@ WAYS = {"either": 0, "rising": 1, "falling": -1}
 Direction: TypeAlias = Annotated[str, words("either", "rising", "falling")]
 Count: TypeAlias = Annotated[Any, Number(low=1, whole=True)]
 
+_PATHS = 20_000
+"""Stretches walked along before a search is given up."""
+
 NEVER = (
     "y does not pass the level, {level}, so often after the time after, {after}; enter a level "
     "that y passes, a smaller count or an earlier after"
@@ -52,13 +55,15 @@ def crossing_of(
     """
     watch, wanted = _watch(before, level), Wanted(way, count, after)
     last: Lag | None = None
-    for path in to_all_digits(paths):
+    for walked, path in enumerate(to_all_digits(paths)):
         if isinstance(path, Repeating):
             cycle = Cycle(path.paths, level, path.period)
             first = cycle.number(after)
             return cycle.take(wanted, Watch() if first else watch, first)
         if path.moment(0) > quiet_after:
             return None
+        if walked > _PATHS:
+            raise Undecided(UNDECIDED)
         last = follow(path, level, last)
         moment = wanted.take(along(last, after, watch))
         if moment is not None:
@@ -148,8 +153,8 @@ def crossing(
 
     Result: time (s), in the broadcast shape of level, tau, initial, count and after.
 
-    Errors: #N/A when y does not pass the level so often; #NUM! outside the ranges, or when more
-    than 300,000 turning points had to be told apart; #VALUE! for a blank, a text, an unknown word
+    Errors: #N/A when y does not pass the level so often; #NUM! outside the ranges, or when too
+    many turning points have to be told apart; #VALUE! for a blank, a text, an unknown word
     or a malformed table.
 
     Assumes: one energy store, constant parts.
@@ -211,7 +216,7 @@ def stays_within(
     Result: time (s), in the broadcast shape of the arguments.
 
     Errors: #N/A when y is outside at t_end; #NUM! outside the ranges, for high below low, or when
-    more than 300,000 turning points had to be told apart; #VALUE! for a blank, a text or a
+    too many turning points have to be told apart; #VALUE! for a blank, a text or a
     malformed table.
 
     Assumes: one energy store, constant parts.

@@ -20,7 +20,7 @@ from tausheet.functions.crossing import (
     crossing_of,
     each,
 )
-from tausheet.functions.digits import fifty_digits
+from tausheet.functions.digits import fifty_digits, span
 from tausheet.functions.errors import DomainError, NotAvailable
 from tausheet.functions.roots import Forcing, Path
 from tausheet.functions.stages import Stage, Stages, runs
@@ -29,10 +29,9 @@ _SHORT = 1 - 2.0**-50
 """A stage that stops by itself ends a hair early, so that rounding does not carry it past."""
 
 
-@fifty_digits
 def _lengths(starts: Sequence[float]) -> list[float]:
     exact = [*map(Decimal, starts), Decimal("Infinity")]
-    return [float(b - a) for a, b in pairwise(exact)]
+    return [span(a, b) for a, b in pairwise(exact)]
 
 
 @fifty_digits

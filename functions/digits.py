@@ -6,6 +6,7 @@ of a crossing, then follow from the arguments alone and not from rounding on the
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable
 from decimal import ROUND_FLOOR, Context, Decimal, localcontext
 from functools import wraps
@@ -34,6 +35,14 @@ def fifty_digits(function: Callable[P, R]) -> Callable[P, R]:
             return function(*args, **kwargs)
 
     return inside
+
+
+@fifty_digits
+def span(begin: Decimal, end: Decimal) -> float:
+    """The double next below end - begin: a stretch of that length does not reach past its end."""
+    exact = end - begin
+    length = float(exact)
+    return length if length <= exact else math.nextafter(length, 0.0)
 
 
 @fifty_digits

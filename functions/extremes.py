@@ -27,7 +27,7 @@ _TIE = 4e-16
 """Share of the larger by which two extremes must differ for the later one to be taken."""
 _SETTLED = 45
 """Time constants after which one period is like the next to rounding."""
-_WINDOWS = 300_000
+_WINDOWS = 50_000
 
 
 class Peak(NamedTuple):
@@ -208,8 +208,8 @@ def peak(
     Result: value (in the unit of initial) and time (s), each in the broadcast shape of the
     arguments.
 
-    Errors: #NUM! outside the ranges, for t_to before t_from, or when more than 300,000 turning
-    points had to be told apart; #VALUE! for a blank, a text, an unknown word or a malformed table.
+    Errors: #NUM! outside the ranges, for t_to before t_from, or when too many turning points
+    have to be told apart; #VALUE! for a blank, a text, an unknown word or a malformed table.
 
     Assumes: one energy store, constant parts.
 

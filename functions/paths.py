@@ -35,16 +35,21 @@ class Repeating:
     period: Decimal
 
 
-def common_period(periods: Iterable[Fraction]) -> Decimal | None:
-    """The shortest time in which all of some periods fit; None when there are too many of them."""
-    known = list(periods)
-    whole = known[0]
-    for period in known[1:]:
-        (a, b), (c, d) = whole.as_integer_ratio(), period.as_integer_ratio()
-        whole = Fraction(math.lcm(a * d, c * b), b * d)
-    if sum(2 * whole / period for period in known) > _TURNS:
-        return None
-    return decimal_of(whole)
+def common_period(periods: Sequence[float], frequencies: Sequence[float]) -> Decimal | None:
+    """The shortest time in which all periods fit; None when it holds too many of them.
+
+    Taken exactly as they are, or else as they were typed: 0.1 s and 50 Hz have one, although the
+    double next to 0.1 has none with 50. What that shifts stays below the last place of t.
+    """
+    for exact in (Fraction, lambda number: Fraction(repr(number))):
+        known = [*map(exact, periods), *(1 / exact(f) for f in frequencies)]
+        whole = known[0]
+        for period in known[1:]:
+            (a, b), (c, d) = whole.as_integer_ratio(), period.as_integer_ratio()
+            whole = Fraction(math.lcm(a * d, c * b), b * d)
+        if sum(2 * whole / period for period in known) <= _TURNS:
+            return decimal_of(whole)
+    return None
 
 
 @fifty_digits
@@ -122,7 +127,7 @@ def _split(path: Path) -> Iterator[Path | Repeating]:
     if not g.sines or g.b or g.c or steady:
         yield path
         return
-    period = common_period([1 / Fraction(frequency) for _, frequency, _ in g.sines])
+    period = common_period([], [frequency for _, frequency, _ in g.sines])
     if period is None:
         yield path
         return

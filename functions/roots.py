@@ -22,7 +22,7 @@ _EPS = 2.0**-53
 _PAD = 16 * _EPS
 """Share of the sum of magnitudes by which a value in doubles may be off."""
 
-_WINDOWS = 300_000
+_WINDOWS = 30_000
 """Windows looked into on one stretch before a search is given up."""
 
 
