@@ -74,7 +74,8 @@ class Book:
             )
 
 
-VERDICT_INKS = {"PASS": (style.GOOD, "FFFFFF"), "FAIL": (style.BAD, "FFFFFF")}
+VERDICT_INKS = {"PASS": (style.CALM, style.GOOD), "FAIL": (style.BAD, "FFFFFF")}
+"""PASS dark on light, FAIL light on dark: apart in grey, too."""
 
 
 def quoted(worksheet: Worksheet) -> str:

@@ -214,7 +214,6 @@ class Curve:
     vertical axis at 0.
     """
 
-    title: str
     end: str
     time_unit: str
     quantity: str

@@ -6,7 +6,7 @@ from collections.abc import Callable, Iterable
 from typing import Any
 
 from openpyxl.cell.cell import Cell
-from openpyxl.styles import Border, Font, PatternFill
+from openpyxl.styles import Border, Font, Side
 from openpyxl.utils import get_column_letter
 from openpyxl.worksheet.pagebreak import Break
 from openpyxl.worksheet.worksheet import Worksheet
@@ -70,11 +70,9 @@ class Page:
         cell.alignment = style.align(horizontal, vertical, wrap, indent)
         return cell
 
-    def paragraph(
-        self, span: str, value: str, size: float = 9, least: int = 1, font: Font | None = None
-    ) -> int:
+    def paragraph(self, span: str, value: str, size: float = 9, font: Font | None = None) -> int:
         """A wrapped text in a row of its own, as high as the text needs."""
-        lines = max(least, style.lines_needed(value, self.width(span), size))
+        lines = style.lines_needed(value, self.width(span), size)
         height = lines * style.line_height(size) + 3
         self.keep(height)
         row = self.down(height)
@@ -105,10 +103,16 @@ class Page:
         for letter in self._letters(span):
             self.worksheet[f"{letter}{row}"].border = border
 
-    def ground(self, row: int, span: str, colour: PatternFill) -> None:
-        """Lay a ground under a span."""
-        for letter in self._letters(span):
-            self.worksheet[f"{letter}{row}"].fill = colour
+    def box(self, row: int, span: str, side: Side) -> None:
+        """Draw a line around a span."""
+        letters = self._letters(span)
+        for letter in letters:
+            self.worksheet[f"{letter}{row}"].border = Border(
+                top=side,
+                bottom=side,
+                left=side if letter == letters[0] else None,
+                right=side if letter == letters[-1] else None,
+            )
 
     def width(self, span: str) -> int:
         """Pixels that a span is wide."""

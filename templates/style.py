@@ -22,7 +22,8 @@ LINE = "B9C2C8"
 DEEP = "2B4A5E"
 WASH = "EEF2F4"
 ENTRY = "FBF3DD"
-GOOD = "1E6B45"
+GOOD = "14532F"
+CALM = "D9ECDF"
 BAD = "A3201D"
 HEED = "8A5A00"
 
@@ -48,9 +49,9 @@ DIGITS = 4
 
 
 @cache
-def font(size: float = 9, bold: bool = False, italic: bool = False, colour: str = INK) -> Font:
+def font(size: float = 9, bold: bool = False, colour: str = INK) -> Font:
     """A font of the page."""
-    return Font(name=FONT, size=size, bold=bold, italic=italic, color=colour)
+    return Font(name=FONT, size=size, bold=bold, color=colour)
 
 
 @cache

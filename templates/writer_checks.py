@@ -42,7 +42,7 @@ def verdict(page: Page, book: Book) -> None:
     cell = page.text(row, "A:B", f"={verdict_formula(book)}", style.font(22, bold=True), "center")
     book.define("verdict", sheet, cell.coordinate)
     book.colour_words(cell.coordinate, VERDICT_INKS)
-    page.frame(row, "A:B", style.BOX)
+    page.box(row, "A:B", style.HEAVY)
     decides = page.text(
         row,
         "C:H",

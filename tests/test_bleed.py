@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import random
 import re
 import zipfile
 from collections.abc import Iterator
@@ -605,3 +606,67 @@ def test_preferred_value_is_never_above_the_largest_allowed(
     # the preferred value itself keeps the time
     demo.put(value_of_series=series, value_of_t_own=minutes, value_of_R_unit=ohms / 1e3)
     assert demo["check_time"] == "PASS"
+
+
+def random_bank(number: int) -> tuple[dict[str, Any], dict[str, Any]]:
+    """A bank drawn from a seed: its cells, and the same as a person reads them in base SI."""
+    draw = random.Random(number)
+    n_s = draw.randint(1, 4)
+    c, r = draw.uniform(0.5, 10), draw.uniform(1, 60)
+    below, above = draw.uniform(0, 30), draw.uniform(0, 30)
+    tolerance = draw.uniform(0, 15)
+    leak = sorted(draw.uniform(0.1, 3) for _ in range(3))
+    start = sorted(draw.uniform(130, 900) for _ in range(3))
+    n_rp = draw.randint(2, 6)
+    n_open, n_p, per_level = draw.randint(0, 1), draw.randint(1, 4), draw.randint(1, 3)
+    tapped = draw.random() < 0.7
+    cells = {
+        "value_of_C_unit": c, "lowest_of_C_unit": -below, "highest_of_C_unit": above,
+        "value_of_R_unit": r, "lowest_of_R_unit": -tolerance, "highest_of_R_unit": tolerance,
+        "lowest_of_I_leak": leak[0], "value_of_I_leak": leak[1], "highest_of_I_leak": leak[2],
+        "lowest_of_V_start": start[0], "value_of_V_start": start[1], "highest_of_V_start": start[2],
+        "value_of_n_s": n_s, "value_of_n_p": n_p, "value_of_n_rs": n_s * per_level,
+        "value_of_n_rp": n_rp, "value_of_n_open": n_open,
+        "value_of_tapped": "yes" if tapped else "no",
+    }  # fmt: skip
+    read = {
+        "C_unit": c / 1e3, "C_unit_lo": c / 1e3 * (1 - below / 100),
+        "C_unit_hi": c / 1e3 * (1 + above / 100), "R_unit": r * 1e3,
+        "R_unit_lo": r * 1e3 * (1 - tolerance / 100), "R_unit_hi": r * 1e3 * (1 + tolerance / 100),
+        "I_leak_lo": leak[0] / 1e3, "I_leak_hi": leak[2] / 1e3, "V_start": start[1],
+        "V_start_lo": start[0], "V_start_hi": start[2], "n_s": n_s, "n_p": n_p,
+        "n_rs": n_s * per_level, "n_rp": n_rp, "n_open": n_open, "tapped": tapped,
+    }  # fmt: skip
+    return cells, DEMO | read
+
+
+def assert_as_by_hand(filled: Filled, number: int) -> None:
+    cells, x = random_bank(number)
+    filled.put(**cells)
+    expected = by_hand(x)
+    for name, value in expected.items():
+        rel = 1e-6 if name in ("P_res", "T_res") else 1e-11
+        assert filled[name] == pytest.approx(value, rel=rel), (number, name)
+    results = {
+        "time": expected["t_safe_max"] <= x["t_limit"],
+        "power": expected["P_res"] <= expected["P_allow"],
+        "resistor_voltage": expected["V_res"] <= x["V_rated"],
+        "capacitor_voltage": expected["V_level"] <= x["V_cap"],
+    }
+    assert filled.checks() == {
+        **{key: "PASS" if kept else "FAIL" for key, kept in results.items()},
+        "agreement": "PASS",
+    }
+    assert filled["verdict"] == ("PASS" if all(results.values()) else "FAIL")
+
+
+@pytest.mark.parametrize("number", range(10))
+def test_random_banks_agree_with_hand_calculation(demo: Filled, number: int) -> None:
+    assert_as_by_hand(demo, number)
+
+
+@pytest.mark.campaign
+def test_many_random_banks_on_both_engines(demo: Filled, in_calc: Filled) -> None:
+    for number in range(100):
+        assert_as_by_hand(demo, number)
+        assert differences(demo, in_calc.put(**random_bank(number)[0])) == []

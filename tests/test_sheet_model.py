@@ -79,7 +79,7 @@ SMALL = Sheet(
     ),
     checks=(Check("mid", "Middle", "V_mid_max", "1.5", "voltage", "a test"),),
     hazards=(),
-    curve=Curve("A line", "t_one", "ms", "voltage", "kV", "voltage", "", (Trace("line", "V_mid"),),
+    curve=Curve("t_one", "ms", "voltage", "kV", "voltage", "", (Trace("line", "V_mid"),),
                 points=4),
     cautions=(Caution("None", "None."),),
     basis=Basis(("m",), ("a",), ("s",), ("n",)),

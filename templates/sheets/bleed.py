@@ -664,7 +664,6 @@ HAZARDS = (
 )
 
 CURVE = Curve(
-    title="Voltage of the bank",
     end="MAX(t_limit,t_safe_max)",
     time_unit="s",
     quantity="voltage",
