@@ -192,7 +192,7 @@ def demo(
     """The main job on the demo scenario: sheets made, computed, results printed."""
     from tausheet.addin.make import make_demo
 
-    console.print("Quay 4, harbour crane, drive retrofit: the sheets of the demo job\n")
+    console.print("Quay 4, harbour crane, drive retrofit: the calc sheets of the demo job\n")
     made = make_demo(folder, force=force)
     _print_made(made)
 
