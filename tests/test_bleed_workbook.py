@@ -11,6 +11,7 @@ from openpyxl import Workbook, load_workbook
 from openpyxl.formula import Tokenizer
 from openpyxl.utils import range_boundaries
 from openpyxl.utils.cell import get_column_letter
+from PIL import Image
 
 from tausheet import templates
 from tausheet.functions.catalogue import CATALOGUE
@@ -249,11 +250,13 @@ def test_validation_refuses_with_a_sentence(book: Workbook) -> None:
 
 
 def test_picture_says_only_symbols_of_the_sheet() -> None:
-    drawing = drawings.texts(SHEET.picture.file)
-    symbols = set(re.findall(r"\b\w+_\w+\b", " ".join(re.findall(r">([^<>]+)<", drawing))))
+    said = drawings.labels(SHEET.picture.file)
+    symbols = set(re.findall(r"\b\w+_\w+\b", " ".join(said)))
     known = {entry.symbol for entry in SHEET.entries()}
     assert symbols >= {"C_unit", "R_unit", "V_start", "n_s", "n_p", "n_rs", "n_rp"}
     assert symbols <= known
+    # the picture that ships is of this drawing: its labels are kept in it
+    assert Image.open(drawings.HERE / SHEET.picture.file).info["labels"] == "|".join(said)
 
 
 def test_picture_is_small_and_in_place(book: Workbook, tmp_path: Path) -> None:

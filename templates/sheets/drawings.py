@@ -9,6 +9,7 @@ picture is one of the sheet's: a test reads them.
 from __future__ import annotations
 
 import io
+import re
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
@@ -73,24 +74,27 @@ DRAWINGS: dict[str, Callable[[], Any]] = {"bleed.png": bleed}
 """Each picture by its file."""
 
 
-def texts(name: str) -> str:
-    """All that a drawing says, as one text."""
+def labels(name: str) -> list[str]:
+    """All that a drawing says, line by line."""
     schemdraw.use("svg")
     data: bytes = DRAWINGS[name]().get_imagedata("svg")
-    return data.decode()
+    return re.findall(r">([^<>\s][^<>]*)<", data.decode())
 
 
 def write(name: str, folder: Path = HERE) -> None:
-    """Draw one picture and write it as a small grey PNG."""
+    """Draw one picture and write it as a small grey PNG, which keeps its labels as a comment."""
     from PIL import Image
+    from PIL.PngImagePlugin import PngInfo
 
+    kept = PngInfo()
+    kept.add_itxt("labels", "|".join(labels(name)))
     schemdraw.use("matplotlib")
     pixels = io.BytesIO()
     DRAWINGS[name]().draw(show=False).getfig().savefig(pixels, format="png", dpi=200)
     image = Image.open(pixels).convert("L")
     inside = image.point(lambda level: 255 if level < 250 else 0).getbbox()
     assert inside is not None, "the drawing is empty"
-    image.crop(inside).quantize(16).save(folder / name, optimize=True)
+    image.crop(inside).quantize(16).save(folder / name, optimize=True, pnginfo=kept)
 
 
 if __name__ == "__main__":
