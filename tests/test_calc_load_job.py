@@ -165,7 +165,8 @@ def test_plain_calls_are_computed_on_load_in_a_window(tmp_path: Path) -> None:
     assert shutil.which("Xvfb"), needed
     program = libreoffice.find().soffice.parent
     assert list(program.glob("libvclplug_*")), needed
-    with subprocess.Popen(["Xvfb", "-displayfd", "1"], stdout=subprocess.PIPE, text=True) as screen:
+    command = ["Xvfb", "-noreset", "-displayfd", "1"]
+    with subprocess.Popen(command, stdout=subprocess.PIPE, text=True) as screen:
         try:
             assert screen.stdout is not None
             display = f":{screen.stdout.readline().strip()}"
