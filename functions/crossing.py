@@ -26,7 +26,7 @@ WAYS = {"either": 0, "rising": 1, "falling": -1}
 Direction: TypeAlias = Annotated[str, words("either", "rising", "falling")]
 Count: TypeAlias = Annotated[Any, Number(low=1, whole=True)]
 
-_PATHS = 20_000
+PATHS = 20_000
 """Stretches walked along before a search is given up."""
 
 NEVER = (
@@ -62,7 +62,7 @@ def crossing_of(
             return cycle.take(wanted, Watch() if first else watch, first)
         if path.moment(0) > quiet_after:
             return None
-        if walked > _PATHS:
+        if walked > PATHS:
             raise Undecided(UNDECIDED)
         last = follow(path, level, last)
         moment = wanted.take(along(last, after, watch))
@@ -84,7 +84,9 @@ def last_passage(
     """The last moment not behind t_end at which y passes the level that way."""
     watch, found = Watch(), None
     last: Lag | None = None
-    for path in to_all_digits(paths):
+    for walked, path in enumerate(to_all_digits(paths)):
+        if walked > PATHS:
+            raise Undecided(UNDECIDED)
         if isinstance(path, Repeating):
             cycle = Cycle(path.paths, level, path.period)
             found = cycle.last(way, watch, 0, t_end) or found

@@ -25,8 +25,6 @@ _FINE = 5e-18
 """Share of the largest term by which nineteen digits may be off."""
 _RIGHT = 2e-16
 """Share of the scale by which y may miss the level at a crossing."""
-_BLOCK = 4096
-"""Rows at a time: their arrays stay in the processor's cache."""
 _SERIES = 0.02
 """Below this share of tau a series stands for s - tau (1 - exp(-s / tau))."""
 

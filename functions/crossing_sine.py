@@ -111,7 +111,7 @@ class Sine(Stretch):
         ratio = np.maximum(2 * np.abs(left) / np.where(gap > 0, gap, 1.0), 1.0)
         counts = self.wanted(side, settled) & (self.rows.count <= 1)
         end = start + self.tau * (1 + np.log(ratio))
-        bracket = Bracket(counts, doubt, start, end, side, self.rows.count)
+        bracket = Bracket(counts, doubt, start.copy(), end, side.copy(), self.rows.count.copy())
         if inside.size:
             periods = self.part(inside)._periods(side[inside], left[inside], turns[inside])
             for name, value in vars(periods).items():
@@ -178,9 +178,9 @@ class Sine(Stretch):
         )
         short = tuple(value.astype(np.float32) for value in state)
         x: Any = np.full(u.shape, 0.5, np.float32)
-        for _ in range(5):  # single precision for a good guess: its sine is much quicker
+        for _ in range(7):  # single precision for a good guess: its sine is much quicker
             h, g = _values(x, *short)
-            x = np.fmin(np.fmax(x + np.log1p(-h / g) / short[0], 0), 1)
+            x = np.fmin(np.fmax(x + np.log1p(-h / g) / short[0], 0.5 * x), 0.5 * x + 0.5)
         x = x.astype(np.float64)
         h, g = _values(x, *state)
         step = np.log1p(-h / g) / u
@@ -188,8 +188,9 @@ class Sine(Stretch):
         astray = ~((np.abs(step) * np.maximum(u, 1.0) <= 1e-5) & (x >= 0) & (x <= 1))
         if astray.any():
             rest = np.flatnonzero(astray)
-            middle = np.full(rest.shape, 0.5)
-            x[rest] = search(_values, tuple(v[rest] for v in state), side[rest], middle)
+            again = x[rest] - step[rest]
+            again = np.where((again >= 0) & (again <= 1), again, 0.5)
+            x[rest] = search(_values, tuple(v[rest] for v in state), side[rest], again)
         crossing: Array = left + width * x
         return crossing
 

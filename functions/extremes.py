@@ -15,7 +15,7 @@ import numpy as np
 from tausheet.functions.arguments import Finite, Positive, words
 from tausheet.functions.catalogue import Answer, cell_function
 from tausheet.functions.course import Course
-from tausheet.functions.crossing import UNDECIDED
+from tausheet.functions.crossing import PATHS, UNDECIDED
 from tausheet.functions.digits import fifty_digits
 from tausheet.functions.errors import DomainError
 from tausheet.functions.passages import follow
@@ -69,7 +69,9 @@ def peak_of(
     """
     best = _Best({"max": 1, "min": -1, "abs": 0}[kind])
     last: Lag | None = None
-    for path in _through(to_all_digits(paths), t_from, t_to):
+    for walked, path in enumerate(_through(to_all_digits(paths), t_from, t_to)):
+        if walked > PATHS:
+            raise Undecided(UNDECIDED)
         if last is None and before is not None and t_from < path.moment(0):
             best.offer(before, t_from)
         if path.moment(0) > t_to:

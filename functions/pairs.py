@@ -14,12 +14,37 @@ from typing import Any, TypeAlias
 import numpy as np
 
 from tausheet.functions.digits import TURN, fall, sine_and_cosine
-from tausheet.functions.exact import Array, two_product, two_sum
+from tausheet.functions.exact import Array, two_sum
 
 Pair: TypeAlias = tuple[Any, Any]
 
 _STEPS = 64
 """Entries of the tables, per factor of two and per turn."""
+
+
+_SPLITTER = 134217729.0
+"""2^27 + 1, as in `exact`."""
+
+
+def two_product(a: Any, b: Any) -> Pair:
+    """a b and its rounding error as in `exact`, in as few arrays as it takes."""
+    product = a * b
+    a_high = a * _SPLITTER
+    rest = a_high - a
+    a_high -= rest
+    b_high = b * _SPLITTER
+    rest = b_high - b
+    b_high -= rest
+    a_low, b_low = a - a_high, b - b_high
+    error = a_high * b_high
+    error -= product
+    a_high *= b_low
+    error += a_high
+    b_high *= a_low
+    error += b_high
+    a_low *= b_low
+    error += a_low
+    return product, error
 
 
 def pair_of(number: Decimal) -> tuple[float, float]:
