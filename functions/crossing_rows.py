@@ -25,6 +25,8 @@ _FINE = 5e-18
 """Share of the largest term by which nineteen digits may be off."""
 _RIGHT = 2e-16
 """Share of the scale by which y may miss the level at a crossing."""
+_LEAST = 1e-250
+"""Below this pairs of doubles lose their second double, above its inverse they overflow."""
 _SERIES = 0.02
 """Below this share of tau a series stands for s - tau (1 - exp(-s / tau))."""
 
@@ -124,7 +126,9 @@ class Stretch(ABC):
         A y that starts at the level has no side it came from.
         """
         resting = (self.start == 0) & (self.first[0] == 0) & (self.t0 == 0)
-        return np.where(resting, 0.0, np.sign(h)), (np.abs(h) <= NOISE * self.scale) & ~resting
+        doubt = ~(np.abs(h) > NOISE * self.scale) & ~resting
+        doubt |= ~((self.scale > _LEAST) & (self.scale < 1 / _LEAST))
+        return np.where(resting, 0.0, np.sign(h)), doubt
 
     def solve(self, where: Where, bracket: Bracket) -> tuple[Array, Mask]:
         """The crossings in their brackets, and whether each is right for sure."""
@@ -177,7 +181,7 @@ class Straight(Stretch):
         """h after s, and whether doubles do not tell its side."""
         u = s / self.tau
         h = _after(self.first[0], self.drive[0], self.b, s, self.tau, u)
-        return h, np.abs(h) <= NOISE * (self.scale + abs(self.b) * s)
+        return h, ~(np.abs(h) > NOISE * (self.scale + abs(self.b) * s))
 
     def bracket(self) -> Bracket:
         """One turning point of h exp(s / tau) at most: where the line is at the level."""

@@ -102,7 +102,7 @@ class Sine(Stretch):
         side, doubt = self.side_at_start(h)
         noise = NOISE * self.scale
         beyond = np.abs(drive) - reach
-        doubt |= np.abs(beyond) <= noise
+        doubt |= ~(np.abs(beyond) > noise)
         inside = rows_of((beyond < 0) & ~doubt)
         if isinstance(inside, slice):
             return self._periods(side, left, turns)
@@ -149,7 +149,7 @@ class Sine(Stretch):
 
     def _flip(self, p: Array, left: Array, d: Array, period: float) -> tuple[Array, Array, Mask]:
         """Side before the change, the period of the change, and whether that is in doubt."""
-        doubt = np.abs(p) <= NOISE * self.scale
+        doubt = ~(np.abs(p) > NOISE * self.scale)
         changes = p * left < 0
         ratio = np.abs(left / p)
         n = (self.tau * np.log(ratio) - d) / period

@@ -221,7 +221,7 @@ class Lag:
     def side(self, s: float) -> int:
         """Which side of the level y is on after s."""
         h, error, _ = self.at(s)
-        if not abs(h) <= error:
+        if abs(h) > error:
             return 1 if h > 0 else -1
         if self.path.exact is None:
             return 0
@@ -383,7 +383,7 @@ class Lag:
         if not any(line[1:]) and abs(line[0]) <= self._ripple * (1 + _PAD):
             return None if self._ripple else 750 * longest
         s = longest or 1.0
-        while True:
+        while s < math.inf:
             value = slope = 0.0
             for power in (3, 2, 1, 0):
                 slope = slope * s + value
@@ -393,6 +393,7 @@ class Lag:
             if away and abs(value) > (self._ripple + left) * (1 + _PAD) + _PAD * abs(line[0]):
                 return s
             s *= 2
+        raise Undecided(_TOO_MANY)
 
     def _settled_line(self) -> tuple[float, float, float, float]:
         """What h settles to apart from the ripple: coefficients of 1, s, s^2, s^3."""

@@ -15,7 +15,7 @@ from itertools import pairwise
 import pytest
 from mpmath import iv, mp, mpf
 
-from tausheet.functions.crossing import crossing
+from tausheet.functions import crossing, stays_within, table_crossing
 from tausheet.functions.errors import DomainError, NotAvailable
 
 CASES = 2000
@@ -210,6 +210,10 @@ def case(seed):
     kind = ["plain", "twin", "plain", "touch", "plain", "edge", "plain", "settled", "ripple"][
         seed % 9
     ]
+    if seed % 90 == 9:  # a square with a thousand periods
+        period, duty = tau * round(rng.uniform(0.002, 0.02), 4), rng.choice([0.25, 0.5, 0.6])
+        rows = [("square", (0.0, 1.0, period, duty), 0.0)]
+        return rows, tau, 0.0, duty * rng.uniform(0.3, 1.001), 1000 * period
     if kind == "ripple":  # a fast small sine on a slow large step
         frequency = round(rng.uniform(20, 60), 1) / tau
         rows = [("step", (1.0,), 0.0), ("sine", (rng.uniform(0.5, 5), frequency, 0.0), 0.0)]
@@ -235,6 +239,10 @@ def case(seed):
     return rows, tau, initial, level, horizon
 
 
+def as_table(rows):
+    return [[shape, *v, start, *([None] * (4 - len(v)))] for shape, v, start in rows]
+
+
 def check(rows, tau, initial, level, horizon, rng):
     pieces = pieces_of(rows, tau, initial, horizon)
     roots = [root for piece in pieces for root in roots_in(piece, level)]
@@ -248,10 +256,7 @@ def check(rows, tau, initial, level, horizon, rng):
     behind = [bounds for bounds in counted if bounds[0] > after]
     if any(left <= after <= right for left, right in counted):
         after, behind = 0.0, counted
-    table = [[shape, *values, *([None] * (4 - len(values))), None] for shape, values, _ in rows]
-    for row, (shape, values, start) in zip(table, rows, strict=True):
-        if shape != "constant":
-            row[len(values) + 1] = start
+    table = as_table(rows)
     count = rng.randrange(1, len(behind) + 2) if behind else 1
     try:
         t = crossing(level, tau, initial, table, way, count, after)
@@ -280,6 +285,49 @@ def run(seed):
         check(rows, tau, initial, level, horizon, random.Random(seed + 10**6))
     except ArithmeticError as exact:
         pytest.fail(f"the reference cannot tell: {exact}")
+
+
+@pytest.mark.parametrize("seed", range(20))
+def test_table_against_interval_arithmetic(seed):
+    """Points in sixty-fourths, so that lines between them are ramps without rounding."""
+    rng = random.Random(seed)
+    times = sorted({rng.randrange(1, 512) / 64 for _ in range(rng.randrange(3, 30))})
+    levels = [rng.randrange(-64, 65) / 64 for _ in times]
+    rows = [("step", (levels[0],), 0.0)]
+    for (t0, x0), (t1, x1) in pairwise(zip(times, levels, strict=True)):
+        rows.append(("ramp", (x1 - x0, t1 - t0), t0))
+    tau, initial = rng.choice([0.05, 0.5, 5.0]), rng.randrange(-64, 65) / 64
+    pieces = pieces_of(rows, tau, initial, 9.0)
+    level = float(response(pieces, rng.uniform(0.1, 8.9)))
+    for count, (left, right, _) in enumerate(
+        (root for piece in pieces for root in roots_in(piece, level)), start=1
+    ):
+        t = table_crossing(level, tau, initial, times, levels, False, "either", count)
+        assert float(left) * (1 - 1e-15) <= t <= float(right) * (1 + 1e-15)
+        # half the last place of t, which y may move in, comes on top
+        assert abs(response(pieces, t) - level) <= 1e-15 + math.ulp(t) / tau
+
+
+@pytest.mark.parametrize("seed", [*range(0, 60, 2), *range(1, 60, 18)])
+def test_stay_inside_limits_against_interval_arithmetic(seed):
+    rows, tau, initial, middle, horizon = case(seed)
+    t_end = float(horizon) * 0.99
+    pieces = pieces_of(rows, tau, initial, t_end)
+    there = response(pieces, t_end)
+    width = abs(float(there) - middle) * 1.5 + 1e-3
+    low, high = middle - width, middle + width
+    last = mpf(0)
+    for limit, inwards in ((low, 1), (high, -1)):
+        for piece in pieces:
+            for _, right, way in roots_in(piece, limit):
+                if way == inwards:
+                    last = max(last, right)
+    t = stays_within(low, high, tau, initial, as_table(rows), t_end)
+    if last:
+        assert t <= float(last)
+        assert min(abs(response(pieces, t) - limit) for limit in (low, high)) <= 1e-13 * width
+    else:
+        assert t == 0
 
 
 @pytest.mark.parametrize("seed", range(IN_CI))
