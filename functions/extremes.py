@@ -130,6 +130,9 @@ def _along(lag: Lag, t_from: float, t_to: float, best: _Best) -> None:
     start = path.moment(0)
     left = max(t_from - start, 0.0)
     right = min(t_to - start, path.length)
+    low, high = lag.reach(left, right)
+    if max(best.measure(low), best.measure(high)) < best.size:
+        return
     value = _value_on(path)
     best.offer(value(left), path.moment(left))
     for s in _turning_points(lag, left, right, best):

@@ -360,18 +360,25 @@ class Lag:
         exact = self.path.exact
         if exact is None:
             return x
-        for _ in range(200):
+        last: tuple[Decimal, Decimal] | None = None
+        for _ in range(400):
             h = exact(x) - self.level
-            if (h > 0) == (side > 0) and h:
-                a = x
+            before = (h > 0) == (side > 0) and h != 0
+            a, b = (x, b) if before else (a, x)
+            g = self.g(float(x))
+            if h == 0:
+                return x
+            if abs(float(h)) < 1e-3 * abs(g):
+                guess = x + Decimal(self._step(float(h), g))
+            elif last is not None and h != last[1]:  # y keeps close to the forcing: a secant
+                guess = x - h * (x - last[0]) / (h - last[1])
             else:
-                b = x
-            step = Decimal(self._step(float(h), self.g(float(x))))
-            guess = x + step if step.is_finite() else a
+                guess = x + abs(x) * _NEAR * (1 if before else -1)
+            last = x, h
             if not a < guess < b:
                 guess = (a + b) / 2
-            if not h or abs(guess - x) <= abs(guess) * _FINE:
-                return guess if h else x
+            if abs(guess - x) <= abs(guess) * _FINE or b - a <= abs(b) * _FINE:
+                return guess
             x = guess
         return x
 
@@ -417,6 +424,7 @@ class Lag:
 _NOTHING = Decimal("1e-24")
 """Share of a double's uncertainty that fifty digits count as 0."""
 _FINE = Decimal("1e-20")
+_NEAR = Decimal("1e-14")
 _TOO_MANY = (
     "the moment asked for lies behind more turning points than can be told apart; "
     "enter a later after or a smaller count"
