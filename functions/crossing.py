@@ -34,8 +34,8 @@ NEVER = (
     "that y passes, a smaller count or an earlier after"
 )
 UNDECIDED = (
-    "more turning points of y lie before the passage asked for than can be told apart; enter a "
-    "later after or a smaller count"
+    "more turning points of y have to be looked at than can be told apart; ask for fewer passages "
+    "or a shorter time"
 )
 
 

@@ -6,6 +6,7 @@ import math
 from collections.abc import Callable, Iterable, Iterator
 from dataclasses import replace
 from decimal import Decimal
+from functools import partial
 from heapq import heappop, heappush
 from itertools import pairwise
 from typing import Annotated, Any, NamedTuple
@@ -42,18 +43,19 @@ class _Best:
 
     def __init__(self, sign: int) -> None:
         self.sign = sign
-        self.size, self.value, self.time = -math.inf, math.nan, math.nan
+        self.size, self.time = -math.inf, math.nan
+        self.value: Callable[[], float] = lambda: math.nan
 
     def measure(self, y: float) -> float:
         """How large y counts."""
         return self.sign * y if self.sign else abs(y)
 
-    def offer(self, y: float, t: float) -> None:
-        """Look at a value."""
+    def offer(self, y: float, t: float, exact: Callable[[], float]) -> None:
+        """Look at a value in doubles; `exact` gives all its digits should it win."""
         size = self.measure(y)
         tie = _TIE * max(abs(size), abs(self.size)) if self.time == self.time else 0.0
         if size > self.size + tie or (size >= self.size - tie and t < self.time):
-            self.size, self.value, self.time = size, y, t
+            self.size, self.value, self.time = size, exact, t
 
 
 def peak_of(
@@ -73,13 +75,13 @@ def peak_of(
         if walked > PATHS:
             raise Undecided(UNDECIDED)
         if last is None and before is not None and t_from < path.moment(0):
-            best.offer(before, t_from)
+            best.offer(before, t_from, partial(float, before))
         if path.moment(0) > t_to:
             break
         last = follow(path, 0.0, last)
         if path.moment(path.length) >= t_from:
             _along(last, t_from, t_to, best)
-    return Peak(best.value, best.time)
+    return Peak(best.value(), best.time)
 
 
 def _through(paths: Iterable[Path | Repeating], t_from: float, t_to: float) -> Iterator[Path]:
@@ -133,18 +135,20 @@ def _along(lag: Lag, t_from: float, t_to: float, best: _Best) -> None:
     low, high = lag.reach(left, right)
     if max(best.measure(low), best.measure(high)) < best.size:
         return
-    value = _value_on(path)
-    best.offer(value(left), path.moment(left))
-    for s in _turning_points(lag, left, right, best):
-        best.offer(value(s), path.moment(s))
-    if right > left:
-        best.offer(value(right), path.moment(right))
+    for s in _candidates(lag, left, right, best):
+        best.offer(lag.at(s)[0], path.moment(s), partial(_exact, path, s))
 
 
-def _value_on(path: Path) -> Callable[[float], float]:
+def _candidates(lag: Lag, left: float, right: float, best: _Best) -> Iterator[float]:
+    yield left
+    yield from _turning_points(lag, left, right, best)
+    yield right
+
+
+def _exact(path: Path, s: float) -> float:
     exact = path.exact
     assert exact is not None
-    return lambda s: float(exact(Decimal(s)))
+    return float(exact(Decimal(s)))
 
 
 def _turning_points(lag: Lag, left: float, right: float, best: _Best) -> Iterator[float]:

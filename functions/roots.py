@@ -425,7 +425,4 @@ _NOTHING = Decimal("1e-24")
 """Share of a double's uncertainty that fifty digits count as 0."""
 _FINE = Decimal("1e-20")
 _NEAR = Decimal("1e-14")
-_TOO_MANY = (
-    "the moment asked for lies behind more turning points than can be told apart; "
-    "enter a later after or a smaller count"
-)
+_TOO_MANY = "more turning points of y have to be looked at than can be told apart"
