@@ -11,8 +11,9 @@ from dataclasses import replace
 from decimal import Decimal
 
 from tausheet.functions.digits import ZERO, fall, fifty_digits, span
+from tausheet.functions.forcing import Forcing
 from tausheet.functions.paths import DEAD, Repeating, common_period
-from tausheet.functions.roots import Forcing, Path
+from tausheet.functions.roots import Path
 from tausheet.functions.shapes import NEVER, SHAPES
 from tausheet.functions.sources import Source
 

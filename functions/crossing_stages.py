@@ -22,7 +22,8 @@ from tausheet.functions.crossing import (
 )
 from tausheet.functions.digits import fifty_digits, span
 from tausheet.functions.errors import DomainError, NotAvailable
-from tausheet.functions.roots import Forcing, Path
+from tausheet.functions.forcing import Forcing
+from tausheet.functions.roots import Path
 from tausheet.functions.stages import Stage, Stages, runs
 
 _SHORT = 1 - 2.0**-50

@@ -16,10 +16,11 @@ from tausheet.functions.crossing import NEVER, UNDECIDED, WAYS, Count, Direction
 from tausheet.functions.digits import fifty_digits
 from tausheet.functions.errors import DomainError, NotAvailable
 from tausheet.functions.exact import Array
+from tausheet.functions.forcing import Forcing
 from tausheet.functions.from_rest import excess
 from tausheet.functions.pairs import add, exponential_fall, less, over, times
 from tausheet.functions.paths import value_after
-from tausheet.functions.roots import Forcing, Lag, Path, Undecided
+from tausheet.functions.roots import Lag, Path, Undecided
 from tausheet.functions.table import Nodes, Points, check_points
 
 _NOISE = 2e-13

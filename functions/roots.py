@@ -16,99 +16,12 @@ from decimal import Decimal, localcontext
 
 from tausheet.functions.digits import fifty_digits
 from tausheet.functions.errors import DomainError
-from tausheet.functions.exact import two_product
+from tausheet.functions.forcing import EPS, PAD, Forcing, turns_after
 
-_EPS = 2.0**-53
-_PAD = 16 * _EPS
-"""Share of the sum of magnitudes by which a value in doubles may be off."""
+__all__ = ["Forcing", "Lag", "Mark", "Path", "Undecided"]
 
 _WINDOWS = 30_000
 """Windows looked into on one stretch before a search is given up."""
-
-
-def _turns(frequency: float, s: float, phase: float) -> float:
-    """frequency s + phase less whole turns, however many."""
-    product, error = two_product(frequency, s)
-    return float((product - math.floor(product)) + error + phase)
-
-
-@dataclass(frozen=True)
-class Forcing:
-    """a + b s + c s^2 + sines (amplitude, frequency, phase in turns) + decays (amplitude, T)."""
-
-    a: float = 0.0
-    b: float = 0.0
-    c: float = 0.0
-    sines: tuple[tuple[float, float, float], ...] = ()
-    decays: tuple[tuple[float, float], ...] = ()
-
-    def __call__(self, s: float) -> float:
-        """The forcing after s."""
-        x = self.a + s * (self.b + s * self.c)
-        for amplitude, frequency, phase in self.sines:
-            x += amplitude * math.sin(math.tau * _turns(frequency, s, phase))
-        for amplitude, source_tau in self.decays:
-            x += amplitude * math.exp(-s / source_tau)
-        return x
-
-    def bounds(self, left: float, right: float) -> tuple[float, float]:
-        """Numbers that the forcing stays between from left to right."""
-        low, high = self.slow_bounds(left, right)
-        size = 0.0
-        for amplitude, frequency, phase in self.sines:
-            down, up = _sine_bounds(_turns(frequency, left, phase), frequency * (right - left))
-            low += min(amplitude * down, amplitude * up)
-            high += max(amplitude * down, amplitude * up)
-            size += abs(amplitude)
-        return low - _PAD * size, high + _PAD * size
-
-    def slow_bounds(self, left: float, right: float) -> tuple[float, float]:
-        """The same without the sines."""
-        ends = [s * (self.b + s * self.c) for s in (left, right)]
-        size = right * (abs(self.b) + right * abs(self.c))
-        if self.c and left < (middle := -self.b / (2 * self.c)) < right:
-            ends.append(middle * self.b / 2)
-        low, high = min(ends), max(ends)
-        for amplitude, source_tau in self.decays:
-            first = amplitude * math.exp(-left / source_tau)
-            last = amplitude * math.exp(-right / source_tau)
-            low, high = low + min(first, last), high + max(first, last)
-            size += abs(first) * (1 + left / source_tau)
-        if size:
-            size += abs(self.a)
-        return self.a + low - _PAD * size, self.a + high + _PAD * size
-
-    def slope(self) -> Forcing:
-        """The forcing's rate of change."""
-        return Forcing(
-            self.b,
-            2 * self.c,
-            0.0,
-            tuple((a * math.tau * f, f, phase + 0.25) for a, f, phase in self.sines),
-            tuple((-a / source_tau, source_tau) for a, source_tau in self.decays),
-        )
-
-    def scaled(self, k: float) -> Forcing:
-        """The forcing times k."""
-        return Forcing(
-            k * self.a,
-            k * self.b,
-            k * self.c,
-            tuple((k * a, f, phase) for a, f, phase in self.sines),
-            tuple((k * a, source_tau) for a, source_tau in self.decays),
-        )
-
-
-def _sine_bounds(start: float, turned: float) -> tuple[float, float]:
-    """Bounds of the sine while it turns from `start`, in turns."""
-    if not turned < 1:
-        return -1.0, 1.0
-    start -= math.floor(start)
-    end = start + turned
-    first, last = math.sin(math.tau * start), math.sin(math.tau * end)
-    high = 1.0 if start <= 0.25 <= end or end >= 1.25 else max(first, last)
-    low = -1.0 if start <= 0.75 <= end or end >= 1.75 else min(first, last)
-    return low, high
 
 
 @dataclass(frozen=True)
@@ -155,7 +68,7 @@ class Lag:
             g = path.forcing
         self.path, self.level = path, Decimal(level)
         self.g, self.slope, self.tau = g, g.slope(), path.tau
-        self.start, self.error = start, error + _PAD * abs(start)
+        self.start, self.error = start, error + PAD * abs(start)
         self._sines = [self._settled(*sine) for sine in g.sines]
         self._ripple = sum(math.hypot(p, q) for _, _, p, q, _ in self._sines)
 
@@ -174,7 +87,7 @@ class Lag:
     def _ripples(self, s: float) -> list[float]:
         settled = []
         for f, phase, p, q, _ in self._sines:
-            angle = math.tau * _turns(f, s, phase)
+            angle = math.tau * turns_after(f, s, phase)
             settled.append(p * math.sin(angle) + q * math.cos(angle))
         return settled
 
@@ -201,7 +114,7 @@ class Lag:
             term, rough = self._decayed(amplitude, source_tau, s, fall)
             terms.append(term)
             size += rough
-        return math.fsum(terms), _PAD * size + self.error * fall, math.fsum(ripples)
+        return math.fsum(terms), PAD * size + self.error * fall, math.fsum(ripples)
 
     def _decayed(self, a: float, source_tau: float, s: float, fall: float) -> tuple[float, float]:
         """Response to a decay, and the size of what was added up for it."""
@@ -247,7 +160,7 @@ class Lag:
             if not self.one_sided(self.g, left, right):
                 if not self.one_sided(self.slope, left, right):
                     middle = left + (right - left) / 2
-                    if left < middle < right and right - left > 4 * _EPS * right:
+                    if left < middle < right and right - left > 4 * EPS * right:
                         stack += [(middle, right), (left, middle)]
                         continue
                 elif (turn := self._turn(left, right)) is not None:
@@ -269,7 +182,7 @@ class Lag:
                 found += [] if turn is None else [turn]
                 continue
             middle = left + (right - left) / 2
-            if right - left > 4 * _EPS * right:
+            if right - left > 4 * EPS * right:
                 stack += [(middle, right), (left, middle)]
             else:
                 found.append(middle)
@@ -293,10 +206,10 @@ class Lag:
         low, high = -math.inf, math.inf
         for value, (least, most), margin in (
             (h, self.g.bounds(left, right), error),
-            (h - ripple, self.g.slow_bounds(left, right), error + self._ripple * (1 + _PAD)),
+            (h - ripple, self.g.slow_bounds(left, right), error + self._ripple * (1 + PAD)),
         ):
             down, up = value * fall + least * step, value * fall + most * step
-            margin += _PAD * (abs(value) + max(abs(least), abs(most)) * step)
+            margin += PAD * (abs(value) + max(abs(least), abs(most)) * step)
             low = max(low, min(value, down) - margin)
             high = min(high, max(value, up) + margin)
             if not self._sines:
@@ -387,7 +300,7 @@ class Lag:
         longest = max([0.0 if math.isinf(self.tau) else self.tau, *(t for _, t in self.g.decays)])
         line = self._settled_line()
         first = abs(self.start) + abs(line[0]) + self._ripple
-        if not any(line[1:]) and abs(line[0]) <= self._ripple * (1 + _PAD):
+        if not any(line[1:]) and abs(line[0]) <= self._ripple * (1 + PAD):
             return None if self._ripple else 750 * longest
         s = longest or 1.0
         while s < math.inf:
@@ -397,7 +310,7 @@ class Lag:
                 value = value * s + line[power]
             left = self._left(s, first)
             away = value * slope >= 0 and all(value * part >= 0 for part in line[2:])
-            if away and abs(value) > (self._ripple + left) * (1 + _PAD) + _PAD * abs(line[0]):
+            if away and abs(value) > (self._ripple + left) * (1 + PAD) + PAD * abs(line[0]):
                 return s
             s *= 2
         raise Undecided(_TOO_MANY)

@@ -19,7 +19,7 @@ from tausheet.functions.digits import (
     to_square,
     turns_of,
 )
-from tausheet.functions.roots import Forcing
+from tausheet.functions.forcing import Forcing
 
 NEVER = Decimal("Infinity")
 
