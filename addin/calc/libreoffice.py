@@ -66,9 +66,16 @@ def find() -> Office:
 
 
 def clean_environment() -> dict[str, str]:
-    """The environment without what belongs to this Python only."""
+    """The environment without what belongs to this Python only.
+
+    The system's programs come first: LibreOffice's Python takes its library from beside the first
+    python3 on the path, and crashes on that of another.
+    """
     own = ("PYTHONPATH", "PYTHONHOME", "VIRTUAL_ENV", "URE_BOOTSTRAP")
-    return {name: value for name, value in os.environ.items() if name not in own}
+    kept = {name: value for name, value in os.environ.items() if name not in own}
+    if os.name == "posix":
+        kept["PATH"] = os.pathsep.join(["/usr/bin", "/bin", kept.get("PATH", "")])
+    return kept
 
 
 def _programs() -> Iterator[Path]:
