@@ -9,6 +9,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from mpmath import mp, mpf
 
 from tausheet.functions import (
     crossing,
@@ -403,3 +404,62 @@ def test_only_the_bad_elements_of_a_range_are_errors():
     times = crossing([2.5, 7.5, 2.5], [1.0, 1.0, -1.0], 0.0, STEP)
     assert times[0] == math.log(2)
     assert [error_kind(t).text for t in times[1:]] == ["#N/A", "#NUM!"]
+
+
+def stage_passages(rows, initial, level):
+    """Passages stage by stage with mpmath: within one y moves in one direction only."""
+    y, found = mpf(initial), []
+    ends = [*(row[0] for row in rows[1:]), math.inf]
+    for (start, tau, heads, jump, stop), end in zip(rows, ends, strict=True):
+        if jump is not None:
+            if (y - level) * (jump - level) < 0:
+                found.append((mpf(start), 1 if jump > level else -1))
+            y = mpf(jump)
+        span = mpf(end) - start
+
+        def value(s, y=y, tau=tau, heads=heads):
+            if tau == "hold":
+                return y
+            return y + heads * s if tau == "rate" else heads + (y - heads) * mp.exp(-s / mpf(tau))
+
+        def moment(to, y=y, tau=tau, heads=heads):
+            if tau == "hold" or (tau == "rate" and not heads):
+                return None
+            if tau == "rate":
+                s = (to - y) / mpf(heads)
+            else:
+                ratio = (y - heads) / (to - heads)
+                s = mpf(tau) * mp.log(ratio) if ratio > 0 else mpf(-1)
+            return s if s > 0 else None
+
+        stopped = None if stop is None else moment(mpf(stop))
+        moving = span if stopped is None else min(span, stopped)
+        passed = moment(mpf(level))
+        if passed is not None and passed < moving:
+            found.append((start + passed, 1 if y < level else -1))
+        y = mpf(stop) if stopped is not None and stopped <= span else value(span)
+    return found
+
+
+@pytest.mark.parametrize("seed", range(80))
+def test_stages_against_mpmath(seed):
+    random = np.random.default_rng(seed)
+    start, rows = 0.0, []
+    for _ in range(random.integers(1, 9)):
+        kind = random.choice(["lag", "lag", "hold", "rate"])
+        tau = float(random.uniform(0.05, 3)) if kind == "lag" else str(kind)
+        heads = None if kind == "hold" else float(random.normal())
+        jump = float(random.normal()) if random.random() < 0.3 else None
+        stop = float(random.normal()) if kind != "hold" and random.random() < 0.3 else None
+        rows.append([start, tau, heads, jump, stop])
+        start += float(random.uniform(0.05, 2))
+    initial, level = float(random.normal()), float(random.normal() / 2)
+    with mp.workdps(40):
+        expected = stage_passages(rows, initial, level)
+        for way, sign in (("rising", 1), ("falling", -1)):
+            moments = [t for t, own in expected if own == sign and t > 0]
+            for count, t in enumerate(moments, start=1):
+                found = stages_crossing(level, initial, rows, way, count)
+                assert abs(found - t) <= math.ulp(found)
+            with pytest.raises(NotAvailable):
+                stages_crossing(level, initial, rows, way, len(moments) + 1)
