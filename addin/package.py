@@ -10,7 +10,7 @@ import io
 import posixpath
 import re
 import zipfile
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from pathlib import Path
 from typing import Any
 from xml.parsers import expat
@@ -133,13 +133,15 @@ def _copy(made: Any, entry: zipfile.ZipInfo, raw: bytes) -> None:
 def _spliced(xml: bytes, values: Mapping[str, CellValue]) -> bytes:
     """A sheet's XML with the values put in; cells that `values` does not name stay."""
     found = _Cells(xml)
-    out, at = [], 0
+    edits: list[tuple[int, int, bytes]] = []
     for cell in found.cells:
-        if cell.address not in values or not (cell.has_formula or cell.in_block):
-            continue
-        out.append(xml[at : cell.start])
-        out.append(_rewritten(xml, cell, values[cell.address]))
-        at = cell.end
+        if cell.address in values and (cell.has_formula or cell.in_block):
+            edits.append((cell.start, cell.end, _rewritten(xml, cell, values[cell.address])))
+    edits += found.added(values)
+    out, at = [], 0
+    for start, end, new in sorted(edits, key=lambda edit: edit[:2]):
+        out += [xml[at:start], new]
+        at = end
     return b"".join(out) + xml[at:]
 
 
@@ -157,6 +159,10 @@ class _Cells:
 
     def __init__(self, xml: bytes) -> None:
         self.cells: list[_Cell] = []
+        self._rows: dict[int, int] = {}
+        self._seen_rows: set[int] = set()
+        self._row = 0
+        self._end = 0
         self._xml = xml
         self._cell: _Cell | None = None
         self._value_start = 0
@@ -169,13 +175,13 @@ class _Cells:
 
     def _begin(self, name: str, attributes: dict[str, str]) -> None:
         kind = name.rpartition(":")[2]
+        if kind == "row":
+            self._row = int(attributes.get("r", self._row + 1))
+            self._seen_rows.add(self._row)
         if kind == "c":
             self._cell = _Cell(attributes.get("r", ""), self._parser.CurrentByteIndex)
             column, row = _place(self._cell.address)
-            self._cell.in_block = any(
-                left <= column <= right and top <= row <= bottom
-                for left, top, right, bottom in self._blocks
-            )
+            self._cell.in_block = self._inside(column, row)
         elif kind == "f" and self._cell is not None:
             self._cell.has_formula = True
             if attributes.get("t") == "array" and ":" in attributes.get("ref", ""):
@@ -186,6 +192,10 @@ class _Cells:
 
     def _finish(self, name: str) -> None:
         kind, at, cell = name.rpartition(":")[2], self._parser.CurrentByteIndex, self._cell
+        if kind == "row" and self._xml[at : at + 2] == b"</":
+            self._rows[self._row] = at
+        if kind == "sheetData":
+            self._end = at
         if cell is None:
             return
         if kind == "v":
@@ -194,6 +204,37 @@ class _Cells:
             cell.end = self._element_end(cell.start, at)
             self.cells.append(cell)
             self._cell = None
+
+    def added(self, values: Mapping[str, CellValue]) -> Iterator[tuple[int, int, bytes]]:
+        """Cells of array blocks that the file does not hold yet, and where they go."""
+        known = {cell.address for cell in self.cells}
+        new_rows: dict[int, list[bytes]] = {}
+        for address, value in values.items():
+            column, row = _place(address)
+            if address in known or not self._inside(column, row):
+                continue
+            kind, text = _stored(value)
+            kind = f' t="{kind}"' if kind else ""
+            cell = f'<c r="{address}"{kind}><v>{text}</v></c>'.encode()
+            if row not in self._seen_rows:
+                new_rows.setdefault(row, []).append(cell)
+                continue
+            if row not in self._rows:  # an empty row element: left as it is
+                continue
+            later = [c for c in self.cells if _place(c.address)[1] == row]
+            behind = [c.start for c in later if _place(c.address)[0] > column]
+            at = min(behind, default=self._rows[row])
+            yield at, at, cell
+        for row, cells in new_rows.items():
+            behind = [c.start for c in self.cells if _place(c.address)[1] > row]
+            before = self._xml.rfind(b"<row", 0, min(behind)) if behind else self._end
+            yield before, before, b'<row r="%d">%s</row>' % (row, b"".join(cells))
+
+    def _inside(self, column: int, row: int) -> bool:
+        return any(
+            left <= column <= right and top <= row <= bottom
+            for left, top, right, bottom in self._blocks
+        )
 
     def _element_end(self, start: int, end_tag: int) -> int:
         """End of an element; for an empty one expat gives no place that can be relied on."""
