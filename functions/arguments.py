@@ -317,7 +317,7 @@ class Word(Spec):
         except InputError as error:
             raise InputError(f"{parameter.name} {error}") from None
         self.pass_on(raw, parameter)
-        zero = isinstance(raw, (int, float)) and not isinstance(raw, bool) and raw == 0
+        zero = isinstance(raw, (int, float)) and raw == 0  # FALSE too: LibreOffice hands over 0
         if (is_blank(raw) or zero) and not parameter.required:
             return parameter.default  # type: ignore[no-any-return]
         if isinstance(raw, str):
