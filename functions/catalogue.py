@@ -80,9 +80,15 @@ class CellFunction:
     def reason(self, arguments: Sequence[object]) -> str:
         """Why a call gives an error, in words; an empty text when it does not."""
         try:
+            if self.variadic:
+                self.kernel(*arguments)
+                return ""
             return _evaluate(self, arguments).sentence()
-        except (CellError, TypeError) as error:
+        except CellError as error:
             return str(error)
+        except TypeError:
+            count = len(self.parameters)
+            return f"{self.name} takes {count} arguments, but got {len(arguments)}; leave some out"
 
 
 CATALOGUE: dict[str, CellFunction] = {}

@@ -139,7 +139,7 @@ def write(page: Page, book: Book) -> None:
     book.define("checks_passed", sheet, f"C{row}")
     page.text(row, "D", f"of {len(checks)}")
     page.text(row, "E:F", "inputs that can be used", quiet, "right")
-    page.text(row, "G", "=COUNTIF(input_states,0)", horizontal="right")
+    page.text(row, "G", "=SUMPRODUCT((input_states=0)*(input_faults=0))", horizontal="right")
     book.define("inputs_valid", sheet, f"G{row}")
     page.text(row, "H", f"of {_number_of_inputs(book)}")
     _warnings(page, book)

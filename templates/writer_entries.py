@@ -67,6 +67,7 @@ class Judgement:
         self.value, self.unit, self.lowest, self.highest = (
             address(book.main, f"{letter}{row}") for letter in "CDEF"
         )
+        self.shown = address(book.main, f"G{row}")
         self.faults = self._faults()
 
     def write(self) -> None:
@@ -80,10 +81,14 @@ class Judgement:
         if entry.needed:
             state = f"IF(AND(ISBLANK({self.value}),NOT({entry.needed})),0,{state})"
         cells["H"] = f"=IFERROR({state},{WAITS})"
-        cells["I"] = f"=IF(AND(H{at}>0,H{at}<{WAITS}),1,0)"
+        unusable = f"AND(H{at}>0,H{at}<{WAITS})"
         if isinstance(entry, Choice):
+            cells["I"] = f"=IF({unusable},1,0)"
             cells["L"] = f"=IF(H{at}=0,{self.value},NA())"
         else:
+            # a value put over the one in base SI on the page is a fault as well
+            replaced = f"AND(H{at}=0,M{at}=1,NOT(IFERROR({self.shown}=E{at},FALSE)))"
+            cells["I"] = f"=IF(OR({unusable},{replaced}),1,0)"
             cells |= self._conversion(entry)
         for letter, content in cells.items():
             self.book.entries[f"{letter}{at}"] = content

@@ -137,7 +137,15 @@ def test_reason_finds_the_first_error_in_reading_order() -> None:
     reason = CATALOGUE["FO_STEP"].reason([[[1.0], [2.0]], [[1.0, -2.0]], 0, 5])
     assert reason == "FO_STEP: tau is -2; allowed: number > 0; enter the time constant (s)"
     assert CATALOGUE["FO_STEP"].reason([1, 1, 0, 5]) == ""
-    assert "takes 5 arguments" in CATALOGUE["FO_STEP"].reason([1] * 6)
+    assert "takes 5 arguments, but got 6" in CATALOGUE["FO_STEP"].reason([1] * 6)
+
+
+def test_reason_explains_reason() -> None:
+    ask = CATALOGUE["FO_REASON"].reason
+    assert "cell_function is blank" in ask([None])
+    assert "which is no cell function" in ask(["FO_NOTHING"])
+    assert ask(["FO_STEP", 1, 0, 0, 5]) == ""
+    assert "cell_function is" in ask([0.5, None])
 
 
 def test_keywords_mean_the_same_as_positions() -> None:

@@ -214,3 +214,15 @@ def test_what_is_no_workbook_is_refused_in_one_sentence(tmp_path: Path) -> None:
         assert "Traceback" not in done.stderr
     assert tausheet("new", "bleed", tmp_path / "x.ods").returncode == 2
     assert tausheet("install", "calc", "--to", tmp_path / "y").returncode == 2
+
+
+def test_without_the_extra_for_excel_status_still_answers() -> None:
+    """The first command of the README installs no extra."""
+    blocked = (
+        "import sys; sys.modules.update(olefile=None, xlwings=None); sys.argv[1:] = ['status']"
+    )
+    run = "from tausheet.addin.cli import main; main()"
+    command = [sys.executable, "-c", f"{blocked}; {run}"]
+    done = subprocess.run(command, capture_output=True, text=True, timeout=60)
+    assert "works (--engine embedded" in done.stdout
+    assert "Traceback" not in done.stderr

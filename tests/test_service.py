@@ -53,7 +53,7 @@ def test_the_reason_names_argument_value_and_remedy(
 
 
 def test_too_many_arguments_have_a_reason() -> None:
-    assert "takes 5 arguments, got 6" in reason("FO_STEP", 1, 1, 0, 5, 0, 7)
+    assert "takes 5 arguments, but got 6" in reason("FO_STEP", 1, 1, 0, 5, 0, 7)
 
 
 @pytest.mark.parametrize(

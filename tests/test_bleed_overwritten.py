@@ -1,0 +1,44 @@
+"""A value put over an input's cell in base SI never passes: it is no longer what was typed."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import pytest
+
+from tausheet import templates
+from tausheet.addin.embedded import Book
+
+
+@pytest.fixture(scope="module")
+def workbook() -> Any:
+    return templates.build("bleed", demo=True)
+
+
+def cell_of(workbook: Any, name: str) -> tuple[str, str]:
+    ((sheet, reference),) = workbook.defined_names[name].destinations
+    return sheet, reference.replace("$", "").split(":")[0]
+
+
+def said(workbook: Any, name: str) -> object:
+    sheet, address = cell_of(workbook, name)
+    return Book(workbook).values()[sheet][address]
+
+
+@pytest.mark.parametrize("symbol", ["C_unit", "n_p", "I_leak", "k_back", "R_unit", "V_own"])
+@pytest.mark.parametrize("value", [None, "abc", "60", "=NA()", True, 1.5])
+def test_an_overwritten_input_fails_and_the_sheet_says_so(
+    workbook: Any, symbol: str, value: Any
+) -> None:
+    sheet, address = cell_of(workbook, symbol)
+    before = workbook[sheet][address].value
+    workbook[sheet][address].value = value
+    try:
+        assert said(workbook, "verdict") == "FAIL"
+        assert "at fault" in str(said(workbook, "decided_by"))
+    finally:
+        workbook[sheet][address].value = before
+
+
+def test_the_sheet_as_made_passes(workbook: Any) -> None:
+    assert said(workbook, "verdict") == "PASS"
