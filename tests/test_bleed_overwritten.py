@@ -27,9 +27,7 @@ def said(workbook: Any, name: str) -> object:
 
 @pytest.mark.parametrize("symbol", ["C_unit", "n_p", "I_leak", "k_back", "R_unit", "V_own"])
 @pytest.mark.parametrize("value", [None, "abc", "60", "=NA()", True, 1.5])
-def test_an_overwritten_input_fails_and_the_sheet_says_so(
-    workbook: Any, symbol: str, value: Any
-) -> None:
+def test_an_overwritten_input_fails(workbook: Any, symbol: str, value: Any) -> None:
     sheet, address = cell_of(workbook, symbol)
     before = workbook[sheet][address].value
     workbook[sheet][address].value = value
