@@ -13,10 +13,11 @@ import zipfile
 from collections.abc import Iterable, Iterator, Mapping
 from pathlib import Path
 from typing import Any
+from xml.etree.ElementTree import ParseError
 from xml.parsers import expat
 from xml.sax.saxutils import escape
 
-from defusedxml import ElementTree
+from defusedxml import DefusedXmlException, ElementTree
 
 from tausheet.addin.cells import CellValue
 from tausheet.functions.errors import ErrorKind, TausheetError
@@ -37,6 +38,8 @@ class Unreadable(TausheetError):
 def read(path: Path) -> bytes:
     """The bytes of a workbook file, after a look at what they would unpack to."""
     try:
+        if path.exists() and not path.is_file():
+            raise Unreadable(f"{path} is not a file")
         size = path.stat().st_size
         if size > MOST_BYTES:
             raise Unreadable(f"{path} has {size} bytes, more than a workbook should")
@@ -48,6 +51,7 @@ def read(path: Path) -> bytes:
     try:
         with zipfile.ZipFile(io.BytesIO(data)) as package:
             _inspect(path, package)
+            _check_sheets(path, package)
     except (zipfile.BadZipFile, EOFError, NotImplementedError, RuntimeError, ValueError) as error:
         raise Unreadable(f"{path} is not a whole .xlsx workbook ({error})") from None
     return data
@@ -75,6 +79,15 @@ def _inspect(path: Path, package: zipfile.ZipFile) -> None:
             content[:2] in (b"\xff\xfe", b"\xfe\xff") or re.search(rb"<!(DOCTYPE|ENTITY)", content)
         ):
             raise Unreadable(f"{path}: {part.filename} holds declarations that no workbook needs")
+
+
+def _check_sheets(path: Path, package: zipfile.ZipFile) -> None:
+    try:
+        for part in sheet_parts(package).values():
+            parser = expat.ParserCreate()
+            parser.Parse(package.read(part), True)
+    except (KeyError, ParseError, DefusedXmlException, expat.ExpatError) as error:
+        raise Unreadable(f"{path} is damaged: its worksheets cannot be found ({error})") from None
 
 
 def sheet_parts(package: zipfile.ZipFile) -> dict[str, str]:

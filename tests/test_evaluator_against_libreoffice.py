@@ -36,15 +36,16 @@ OPERANDS = {
     "Z14": " 7 ",
     "Z15": 60.0000000000001,
     "Z16": False,
-    "Z17": "1,5",
+    "Z17": "4.7 mF",
     "Z18": "1e3",
     "Z19": "PASS",
     "Z20": "FAIL",
     "Z21": 60,
     "Z22": "=0.1+0.2",
     "Z23": 0.3,
+    "Z24": "=Z1",
 }
-CELLS = [*OPERANDS, '""', '"x"', "TRUE", "2", "-0.5"]
+CELLS = [*list(OPERANDS)[:23], '""', '"x"', "TRUE", "2", "-0.5"]
 UNORDERED = {"Z14", "Z17"}
 """Texts with spaces or signs: their order is refused."""
 BINARY = ["+", "-", "*", "/", "^", "&", "=", "<>", "<", ">", "<=", ">="]
@@ -133,6 +134,10 @@ REFUSED = [
     "=INDEX(Z1:Z9,0)", "=NOW()", "=RAND()", "=OFFSET(Z1,0,0)", "=FO_NO_SUCH(1)", "=FO_STEP(1,2,3,4,5,6)",
     "=IF(TRUE,Z1:Z3,1)", "=(Z1,Z2)", "=SUM(1", "=1+", "=@Z1", "=Z1#", "=relative_name", '="ä"<"b"',
     '="a b"<"ab"', '=COUNTIF(Z1:Z23,"12")',
+    '="50%"+1', '="2024-05-01"*1', '="1,5"+1', '="TRUE"+1', '="1E400"*1', "=SUM(FO_TAU_RC(Z6:Z7,2)*2)",
+    "=SUM(IF(TRUE,Z3))", "=MATCH(2,{3,1,2},1)", "=MATCH(2,{1,2;3,4},0)", "=SUMPRODUCT(Z6:Z7*Z6:Z8)",
+    "=SUMPRODUCT(--NOT(Z6:Z9))", "=LARGE(Z6:Z9,1.5)", "=COUNTIF(Z1:Z9,Z19:Z20)", "=SUMPRODUCT(Z1:Z4^2)",
+    "=INDEX({1,2;3,4},1)", '=passes_on=""', "=ISNUMBER(passes_on)",
 ]  # fmt: skip
 
 
@@ -154,6 +159,7 @@ def workbook(lines: list[str]) -> Workbook:
         ("blank_cell", "S!$Z$1:$Z$1"),
         ("some_cells", "S!$Z$6:$Z$7"),
         ("relative_name", "S!Z6"),
+        ("passes_on", "S!$Z$24"),
     ):
         book.defined_names[name] = DefinedName(name, attr_text=content)
     sheet.defined_names["local_name"] = DefinedName("local_name", attr_text="S!$Z$6")

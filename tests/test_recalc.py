@@ -194,3 +194,45 @@ def test_texts_that_xml_cannot_hold_are_stored_in_the_workbooks_own_spelling() -
     assert package._stored(ErrorKind.NUM) == ("e", "#NUM!")
     assert package._stored(0.1) == ("", "0.1")
     assert package._stored(1e300) == ("", "1e+300")
+
+
+@pytest.mark.parametrize(
+    ("part", "old", "new"),
+    [
+        ("xl/workbook.xml", b'r:id="rId1"', b'r:id="rId77"'),
+        ("xl/worksheets/sheet1.xml", b"</sheetData>", b""),
+        ("xl/worksheets/sheet1.xml", b'ref="B5:B7"', b'ref="A1:XFD1048576"'),
+        ("xl/worksheets/sheet1.xml", b'ref="B5:B7"', b'ref="5"'),
+        ("xl/styles.xml", b"<fonts", b"<fronts"),
+        ("xl/_rels/workbook.xml.rels", b"<Relationships", b"<Relations"),
+    ],
+)
+def test_a_damaged_part_is_one_sentence_and_the_file_stays(
+    part: str, old: bytes, new: bytes, book: Path
+) -> None:
+    content = zipfile.ZipFile(book).read(part)
+    assert old in content
+    with_part(book, part, content.replace(old, new))
+    before = book.read_bytes()
+    with pytest.raises(TausheetError):
+        recalc(book)
+    assert book.read_bytes() == before
+
+
+def test_a_cell_in_the_far_corner_costs_nothing(book: Path) -> None:
+    workbook = load_workbook(book)
+    workbook["Other"]["XFD1048576"] = 1
+    workbook.save(book)
+    assert recalc(book).cells == 8
+
+
+def test_a_number_that_is_shown_as_a_time_keeps_its_digits(tmp_path: Path) -> None:
+    workbook = Workbook()
+    sheet = workbook.active
+    assert sheet is not None
+    sheet["A1"], sheet["A2"] = 1e-9, "=A1*1E9"
+    sheet["A1"].number_format = "h:mm:ss"
+    path = tmp_path / "time.xlsx"
+    workbook.save(path)
+    recalc(path)
+    assert load_workbook(path, data_only=True)["Sheet"]["A2"].value == pytest.approx(1, rel=1e-15)

@@ -3,26 +3,37 @@
 from __future__ import annotations
 
 import datetime
+import io
 import math
 from collections.abc import Iterable, Iterator
 from pathlib import Path
 from typing import Any
 
-from openpyxl import load_workbook
+from openpyxl.reader.excel import ExcelReader
 from openpyxl.utils import get_column_letter, range_boundaries
 from openpyxl.utils.datetime import CALENDAR_WINDOWS_1900, to_excel
 from openpyxl.worksheet.formula import ArrayFormula
 
+from tausheet.addin import package
 from tausheet.addin.cells import CellValue
-from tausheet.addin.embedded.parser import Area, Formula, Node, Unknown
+from tausheet.addin.embedded.parser import MOST_CELLS, Area, Formula, Node, Unknown, size
 from tausheet.addin.embedded.refused import Refused
-from tausheet.addin.embedded.values import NotHere, Value, top_left
+from tausheet.addin.embedded.values import NotHere, PassedOn, Value, top_left
 from tausheet.functions.errors import ErrorKind
 
 Key = tuple[str, int, int]
 """Sheet, row, column."""
 
 Values = dict[str, dict[str, CellValue]]
+
+
+class _Reader(ExcelReader):
+    """Reads a number as the number that the file holds, whatever format shows it as a date."""
+
+    def read_worksheets(self) -> None:
+        workbook: Any = self.wb
+        workbook._date_formats = workbook._timedelta_formats = set()
+        super().read_worksheets()
 
 
 class Book:
@@ -43,12 +54,19 @@ class Book:
         for sheet in workbook.worksheets:
             self._read(sheet, workbook.epoch)
         self._formulas = {key: self._compiled(key) for key in self._texts}
+        if sum(size(area) for f in self._formulas.values() for area in f.areas) > MOST_CELLS:
+            raise Refused("the workbook", "its formulas refer to more cells than this engine reads")
         self._order = list(self._in_order())
 
     @classmethod
     def load(cls, path: Path) -> Book:
         """Read an .xlsx; Refused names the cells that this engine does not compute."""
-        return cls(load_workbook(path))
+        reader = _Reader(io.BytesIO(package.read(path)))
+        try:
+            reader.read()
+        except Exception as error:  # openpyxl has no error of its own for a damaged part
+            raise package.Unreadable(f"{path} is damaged ({error})") from None
+        return cls(reader.wb)
 
     def set(self, sheet: str, address: str, value: CellValue) -> None:
         """Enter a value into a cell that holds no formula; None empties it."""
@@ -69,7 +87,8 @@ class Book:
         computed: Values = {sheet: {} for sheet in self._sheets}
         for sheet, row, column in (*self._formulas, *self._filled_by):
             address = f"{get_column_letter(column)}{row}"
-            computed[sheet][address] = self._cells[sheet, row, column]
+            value = self._cells[sheet, row, column]
+            computed[sheet][address] = 0.0 if isinstance(value, PassedOn) else value
         return computed
 
     def value(self, sheet: str, row: int, column: int) -> CellValue:
@@ -86,23 +105,26 @@ class Book:
         return sheet in self._sheets
 
     def _read(self, sheet: Any, epoch: datetime.datetime) -> None:
-        for line in sheet.iter_rows():
-            for cell in line:
-                if cell.value is None:
-                    continue
-                key = (sheet.title, cell.row, cell.column)
-                if isinstance(cell.value, ArrayFormula):
-                    left, top, right, bottom = range_boundaries(cell.value.ref)
-                    area = (sheet.title, left, top, right, bottom)
-                    self._texts[key] = (cell.value.text, area)  # type: ignore[assignment]
-                elif cell.data_type == "f":
-                    if not isinstance(cell.value, str):
-                        raise Refused(_address(key), "it belongs to a table of variants")
-                    self._texts[key] = (cell.value, None)
-                elif cell.data_type == "e":
-                    self._cells[key] = _error(cell.value)
-                else:
-                    self._cells[key] = _constant(cell.value, epoch)
+        # not iter_rows, which makes every cell up to the last one, a billion for a far corner
+        for cell in list(sheet._cells.values()):
+            if cell.value is None:
+                continue
+            key = (sheet.title, cell.row, cell.column)
+            if isinstance(cell.value, ArrayFormula):
+                edges: Any = range_boundaries(cell.value.ref)
+                left, top, right, bottom = edges
+                area = (sheet.title, left, top, right, bottom)
+                if None in area or size(area) > MOST_CELLS:
+                    raise Refused(_address(key), "its block is larger than this engine fills")
+                self._texts[key] = (cell.value.text, area)  # type: ignore[assignment]
+            elif cell.data_type == "f":
+                if not isinstance(cell.value, str):
+                    raise Refused(_address(key), "it belongs to a table of variants")
+                self._texts[key] = (cell.value, None)
+            elif cell.data_type == "e":
+                self._cells[key] = _error(cell.value)
+            else:
+                self._cells[key] = _constant(cell.value, epoch)
         for key, (_, block) in self._texts.items():
             if block is not None and key[0] == sheet.title:
                 for other in _keys(block):
@@ -169,7 +191,7 @@ class Book:
 
 def _shown(value: CellValue) -> CellValue:
     """What a formula leaves in its cell: a reference to an empty cell is 0."""
-    return 0.0 if value is None else value
+    return PassedOn() if value is None else value
 
 
 def _keys(area: Area) -> Iterable[Key]:

@@ -6,18 +6,22 @@ import math
 import re
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
 from tausheet.addin.embedded.operators import subtracted
 from tausheet.addin.embedded.values import (
     Grid,
     NotHere,
+    PassedOn,
     Scalar,
     Value,
     cells,
     compared,
     each,
     finite,
+    folded,
+    in_order,
     number,
     text,
     top_left,
@@ -77,10 +81,10 @@ def _of_numbers(function: Callable[..., float | ErrorKind]) -> Callable[..., Sca
 def _round(value: float, places: float = 0.0) -> float:
     """Halves away from zero, on the number as 15 digits show it."""
     count = math.trunc(places)
-    if value == 0 or count > 308:
+    if abs(count) > 300:
+        raise NotHere("ROUND to more than 300 places")
+    if value == 0:
         return value
-    if count < -308:
-        return 0.0
     shown = abs(value)
     scale = 10.0 ** abs(count)
     scaled = shown * scale if count > 0 else shown / scale
@@ -116,7 +120,7 @@ def _numbers(values: tuple[Value, ...]) -> Iterator[float | ErrorKind]:
                 elif isinstance(cell, (float, bool)):
                     yield float(cell)
         else:
-            yield number(value)
+            yield VALUE if isinstance(value, str) else number(value)
 
 
 def _over_numbers(function: Callable[[list[float]], float]) -> Callable[..., Scalar]:
@@ -186,8 +190,7 @@ _CRITERION = re.compile(r"(<=|>=|<>|=|<|>)?(.*)", re.DOTALL)
 
 
 def _countif(area: Value, criterion: Value) -> Scalar:
-    if type(criterion) is list:
-        criterion = criterion[0][0] if len(criterion) == len(criterion[0]) == 1 else VALUE
+    criterion = _single(criterion)
     if isinstance(criterion, ErrorKind) or criterion is None:
         raise NotHere("COUNTIF with a blank or an error as its criterion")
     sign, wanted = "=", criterion
@@ -195,7 +198,7 @@ def _countif(area: Value, criterion: Value) -> Scalar:
         found = _CRITERION.fullmatch(criterion)
         assert found is not None
         sign, written = found[1] or "=", found[2]
-        if re.search(r"[*?~]", written) or not written:
+        if re.search(r"[*?~]", written) or not written or folded(written) in ("true", "false"):
             raise NotHere("COUNTIF with a pattern or nothing as its criterion")
         as_number = number(written)
         if not found[1] and not isinstance(as_number, ErrorKind):
@@ -229,7 +232,9 @@ def _index(area: Value, row: Value, column: Value = None) -> Scalar:
         if isinstance(place, ErrorKind):
             return place
     down, across = (math.trunc(place) for place in at)  # type: ignore[arg-type]
-    if column is None and len(grid) == 1 and len(grid[0]) > 1:
+    if column is None and len(grid[0]) > 1:
+        if len(grid) > 1:
+            raise NotHere("INDEX of a whole row or column")
         down, across = 1, down
     if down == 0 or across == 0:
         raise NotHere("INDEX of a whole row or column")
@@ -255,34 +260,48 @@ def _match(wanted: Value, area: Value, kind: Value = 1.0) -> Scalar:
         raise NotHere("MATCH in falling order")
     if wanted is None or (isinstance(wanted, str) and re.search(r"[*?~]", wanted)):
         raise NotHere("MATCH of a blank or of a pattern")
-    best: Scalar = ErrorKind.NA
+    if type(area) is list and len(area) > 1 and len(area[0]) > 1:
+        raise NotHere("MATCH in more than one column")
+    if order == 1:
+        return _last_not_above(wanted, listed)
     for place, cell in enumerate(listed, start=1):
         if cell is None or isinstance(cell, ErrorKind):
             continue
-        if isinstance(cell, str) != isinstance(wanted, str):
-            continue
-        side = compared(cell, wanted)
-        assert isinstance(side, int)
-        if order == 0 and side == 0:
+        if isinstance(cell, str) == isinstance(wanted, str) and compared(cell, wanted) == 0:
             return float(place)
-        if order == 1:
-            if side > 0:
-                break
-            best = float(place)
-    return best
+    return ErrorKind.NA
+
+
+def _last_not_above(wanted: Scalar, listed: list[Scalar]) -> Scalar:
+    """MATCH in a rising list, which may end in blanks; in any other its answer is an accident."""
+    while listed and listed[-1] is None:
+        listed.pop()
+    if any(
+        cell is None
+        or isinstance(cell, ErrorKind)
+        or isinstance(cell, str) != isinstance(wanted, str)
+        for cell in listed
+    ):
+        raise NotHere("MATCH in a list with gaps or of mixed kinds")
+    if any(in_order(a, b) == 1 for a, b in pairwise(listed)):
+        raise NotHere("MATCH in a list that does not rise")
+    below = [place for place, cell in enumerate(listed, 1) if in_order(cell, wanted) != 1]
+    return float(below[-1]) if below else ErrorKind.NA
 
 
 def _ranked(largest: bool) -> Callable[..., Scalar]:
     def pick(area: Value, rank: Value) -> Scalar:
-        place = number(_single(rank))
+        given = _single(rank)
+        place = number(given)
         if isinstance(place, ErrorKind):
             return place
+        if isinstance(given, str) or place != math.floor(place):
+            raise NotHere("LARGE or SMALL of a rank that is no whole number")
         found = []
         for value in _numbers((area,)):
             if isinstance(value, ErrorKind):
                 return value
             found.append(value)
-        place = math.ceil(place) if largest else math.floor(place)
         if not 1 <= place <= len(found):
             return VALUE
         return sorted(found, reverse=largest)[int(place) - 1]
@@ -291,7 +310,32 @@ def _ranked(largest: bool) -> Callable[..., Scalar]:
 
 
 def _exact(a: Scalar, b: Scalar) -> Scalar:
+    if isinstance(a, PassedOn) or isinstance(b, PassedOn):
+        raise NotHere("EXACT of a cell that refers to an empty one")
     return text(a) == text(b)
+
+
+class _ExactInArrays(Builtin):
+    """EXACT over a range, where LibreOffice never finds a number in the range to be any text."""
+
+    def __call__(self, *values: Value) -> Value:
+        """The result for evaluated arguments."""
+        spread = [type(value) is list for value in values]
+
+        def one(*pair: Scalar) -> Scalar:
+            same = self._one(*pair)
+            numbers = [isinstance(value, (float, bool)) for value in pair]
+            if same is True and any(n and s for n, s in zip(numbers, spread, strict=True)):
+                raise NotHere("EXACT of a number in a range")
+            return same
+
+        return each(one, *values)
+
+
+def _is_number(value: Scalar) -> Scalar:
+    if isinstance(value, PassedOn):
+        raise NotHere("ISNUMBER of a cell that refers to an empty one")
+    return isinstance(value, (float, bool))
 
 
 def _not(value: Scalar) -> Scalar:
@@ -348,7 +392,7 @@ BUILTINS: dict[str, Builtin] = {
     "ISBLANK": _seen(lambda v: v is None),
     "ISERROR": _seen(lambda v: isinstance(v, ErrorKind)),
     "ISLOGICAL": _seen(lambda v: isinstance(v, bool)),
-    "ISNUMBER": _seen(lambda v: isinstance(v, (float, bool))),
+    "ISNUMBER": _seen(_is_number),
     "ISTEXT": _seen(lambda v: isinstance(v, str)),
     "AND": _whole(_all_or_any(all), 1, _ANY),
     "OR": _whole(_all_or_any(any), 1, _ANY),
@@ -368,3 +412,14 @@ BUILTINS: dict[str, Builtin] = {
     "SUMPRODUCT": _whole(_sumproduct, 1, _ANY),
 }
 """By name; IF, IFERROR, CHOOSE and ROW are in the parser, since they do not need every argument."""
+
+IN_ARRAYS: dict[str, Builtin | None] = {
+    **BUILTINS,
+    "EXACT": _ExactInArrays(_exact, 2, 2),
+    "ISLOGICAL": None,
+    "NOT": None,
+}
+"""By name, inside arrays, where LibreOffice takes some values of cells differently."""
+
+TELL_CELLS_APART = {"AND", "OR", "COUNT", "COUNTA", "MAX", "MIN", "SUM", "SUMSQ", "SUMPRODUCT"}
+"""Those to which a text or a blank in a cell is not what it is outside one."""

@@ -7,6 +7,7 @@ import operator
 from collections.abc import Callable
 
 from tausheet.addin.embedded.values import (
+    NotHere,
     Scalar,
     compared,
     finite,
@@ -90,6 +91,13 @@ def percent(value: Scalar) -> Scalar:
     return result if isinstance(result, ErrorKind) else result / 100
 
 
+def _raised_elements(a: Scalar, b: Scalar) -> Scalar:
+    """In arrays LibreOffice has results of its own for blanks, texts and errors."""
+    if type(a) is not float or type(b) is not float:
+        raise NotHere("^ of a range with anything but numbers")
+    return BINARY["^"](a, b)
+
+
 BINARY: dict[str, Callable[..., Scalar]] = {
     "+": _arithmetic(_added),
     "-": _arithmetic(subtracted),
@@ -104,6 +112,9 @@ BINARY: dict[str, Callable[..., Scalar]] = {
     "<=": _comparison(operator.le, in_order),
     ">=": _comparison(operator.ge, in_order),
 }
+
+OF_ELEMENTS = {**BINARY, "^": _raised_elements}
+"""The operators inside arrays."""
 
 BINDING = {
     "prefix": 7,

@@ -17,9 +17,10 @@ from openpyxl.formula.tokenizer import Token, TokenizerError
 from openpyxl.utils import range_boundaries
 
 from tausheet.addin import cells
-from tausheet.addin.embedded.builtin import BUILTINS
-from tausheet.addin.embedded.operators import BINARY, BINDING, negated, percent, plus
-from tausheet.addin.embedded.values import Scalar, Value, each, number, top_left, truth
+from tausheet.addin.embedded.builtin import BUILTINS, IN_ARRAYS, TELL_CELLS_APART
+from tausheet.addin.embedded.operators import BINARY, BINDING, OF_ELEMENTS, negated, percent, plus
+from tausheet.addin.embedded.values import NotHere, Scalar, Value, each, number, truth
+from tausheet.addin.embedded.values import cells as cells_of
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import ErrorKind
 
@@ -27,7 +28,8 @@ STORED_PREFIX = "ORG.TAUSHEET.FUNCTIONS."
 """What LibreOffice puts before our functions when it stores an .xlsx."""
 
 _DEEPEST = 200
-_LARGEST = 2_000_000
+MOST_CELLS = 2_000_000
+"""More than this in a range, or in all ranges of a workbook, is left to LibreOffice."""
 
 Run = Callable[[], Value]
 Area = tuple[str, int, int, int, int]
@@ -61,6 +63,7 @@ class Node:
     run: Run
     is_range: bool = False
     reference: Area | None = None
+    constant: bool = False
 
 
 class Formula:
@@ -73,7 +76,7 @@ class Formula:
         node = self._parsed(text)
         if node.is_range and not array and node.reference is None:
             raise Unknown("it gives a range where a single value belongs")
-        if node.reference and not array and _size(node.reference) > 1:
+        if node.reference and not array and size(node.reference) > 1:
             raise Unknown("it gives a range where a single value belongs")
         self.run = node.run
 
@@ -105,7 +108,8 @@ class Formula:
                 break
             tokens.next()
             right = self._expression(tokens, BINDING[token.value], array)
-            left = self._applied(BINARY[token.value], array, left, right)
+            known = OF_ELEMENTS if array else BINARY
+            left = self._applied(known[token.value], array, left, right)
         tokens.back()
         return left
 
@@ -125,7 +129,7 @@ class Formula:
         if node.is_range:
             raise Unknown("a range stands where a single value belongs")
         run = node.run
-        return run if node.reference else lambda: top_left(run())
+        return run if node.reference or node.constant else lambda: _one(run())
 
     def _operand(self, tokens: _Tokens, array: bool) -> Node:
         token = tokens.next()
@@ -146,7 +150,7 @@ class Formula:
 
     def _constant(self, token: Token) -> Node:
         value = _literal(token)
-        return Node(lambda: value)
+        return Node(lambda: value, constant=True)
 
     def _constant_array(self, tokens: _Tokens) -> Node:
         rows: list[list[Scalar]] = [[]]
@@ -206,7 +210,7 @@ class Formula:
             return None
         left, top, right, bottom = bounds
         area = (sheet, min(left, right), min(top, bottom), max(left, right), max(top, bottom))
-        if _size(area) > _LARGEST:
+        if size(area) > MOST_CELLS:
             raise Unknown(f"{text} is larger than this engine reads")
         return area
 
@@ -214,7 +218,7 @@ class Formula:
         self.areas.append(area)
         sheet, left, top, right, bottom = area
         value = self._book.value
-        if _size(area) == 1:
+        if size(area) == 1:
             return Node(lambda: value(sheet, top, left), False, area)
         rows, columns = range(top, bottom + 1), range(left, right + 1)
         return Node(lambda: [[value(sheet, r, c) for c in columns] for r in rows], True, area)
@@ -228,16 +232,17 @@ class Formula:
             return self._cell_function(name, arguments)
         if name in _LAZY:
             return _LAZY[name](self, arguments, array)
-        builtin = BUILTINS.get(name)
+        builtin = (IN_ARRAYS if array else BUILTINS).get(name)
         if builtin is None:
-            raise Unknown(f"the function {name} is not known")
+            where = "known outside arrays only" if name in BUILTINS else "not known"
+            raise Unknown(f"the function {name} is {where}")
         if not builtin.least <= len(arguments) <= builtin.most:
             raise Unknown(f"{name} does not take {len(arguments)} arguments")
         if any(argument is None for argument in arguments):
             raise Unknown(f"{name} is called with an argument left out")
         given = [argument for argument in arguments if argument is not None]
         if builtin.whole:
-            runs = [_as_range(node) for node in given]
+            runs = [_as_range(node, name) for node in given]
             return Node(lambda: builtin(*(run() for run in runs)))
         if not array or not given:
             runs = [self._for_elements(node, inside) for node in given]
@@ -285,7 +290,7 @@ class Formula:
         nodes = [arguments[0], arguments[1] or blank, otherwise or blank]
         runs = [self._for_elements(node, array) for node in nodes]
         if array:
-            return Node(lambda: each(_chosen, *(run() for run in runs)), True)
+            return Node(lambda: _chosen_elements(*(run() for run in runs)), True)
         condition, then, els = runs
 
         def run() -> Value:
@@ -301,7 +306,7 @@ class Formula:
             raise Unknown("IFERROR takes two arguments")
         runs = [self._for_elements(node, array) for node in arguments if node is not None]
         if array:
-            return Node(lambda: each(_or_else, *(run() for run in runs)), True)
+            return Node(lambda: _each_or_else(*(run() for run in runs)), True)
         first, second = runs
 
         def run() -> Value:
@@ -330,7 +335,7 @@ class Formula:
         row = float(self._row)
         if arguments:
             node = arguments[0]
-            if node is None or node.reference is None or _size(node.reference) != 1:
+            if node is None or node.reference is None or size(node.reference) != 1:
                 raise Unknown("ROW is known for a single cell only")
             row = float(node.reference[2])
         return Node(lambda: row)
@@ -384,14 +389,38 @@ class _Tokens:
         self._depth -= 1
 
 
-def _size(area: Area) -> int:
+def size(area: Area) -> int:
+    """How many cells an area has."""
     return (area[3] - area[1] + 1) * (area[4] - area[2] + 1)
 
 
-def _as_range(node: Node) -> Run:
+def _one(value: Value) -> Scalar:
+    """The only element of a result; a spreadsheet may go on with all of several."""
+    if type(value) is list:
+        if len(value) != 1 or len(value[0]) != 1:
+            raise NotHere("several results where a single value belongs")
+        value = value[0][0]
+    single: Scalar = value
+    return single
+
+
+def _as_range(node: Node, function: str) -> Run:
     """A reference to one cell is a range to a function that takes ranges."""
     run = node.run
-    return (lambda: [[run()]]) if node.reference and not node.is_range else run
+    if node.reference:
+        return run if node.is_range else lambda: [[run()]]
+    if function not in TELL_CELLS_APART or node.constant:
+        return run
+
+    def known() -> Value:
+        value = run()
+        # LibreOffice looks whether IF, INDEX and their like have handed on a cell
+        inside = cells_of(value) if function in ("AND", "OR", "MAX", "MIN") else [value]
+        if any(one is None or isinstance(one, str) for one in inside):
+            raise NotHere("a text or a blank from a formula as an argument that counts numbers")
+        return value
+
+    return known
 
 
 def _literal(token: Token) -> Scalar:
@@ -417,6 +446,25 @@ def _chosen(condition: Scalar, then: Scalar, otherwise: Scalar) -> Scalar:
     if isinstance(decided, ErrorKind):
         return decided
     return then if decided else otherwise
+
+
+def _chosen_elements(condition: Value, then: Value, otherwise: Value) -> Value:
+    shape = _shape(condition)
+    if any(_shape(value) not in ((1, 1), shape) for value in (then, otherwise)):
+        raise NotHere("IF over ranges of different sizes")
+    if any(isinstance(cell, str) for cell in cells_of(condition)):
+        raise NotHere("IF with a text as a condition in an array")
+    return each(_chosen, condition, then, otherwise)
+
+
+def _shape(value: Value) -> tuple[int, int]:
+    return (len(value), len(value[0])) if type(value) is list else (1, 1)
+
+
+def _each_or_else(value: Value, otherwise: Value) -> Value:
+    if _shape(otherwise) not in ((1, 1), _shape(value)):
+        raise NotHere("IFERROR over ranges of different sizes")
+    return each(_or_else, value, otherwise)
 
 
 def _or_else(value: Scalar, otherwise: Scalar) -> Scalar:

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import math
 import re
+import unicodedata
 from collections.abc import Callable, Iterator
 from decimal import Decimal
 from typing import Any, TypeAlias
@@ -19,11 +20,21 @@ Grid: TypeAlias = list[list[Scalar]]
 Value: TypeAlias = Any
 """A scalar, or a grid: the rows of a range."""
 
-_NUMBER = re.compile(r"\s*[+-]?(\d+\.?\d*|\.\d+)([eE][+-]?\d+)?\s*")
+_NUMBER = re.compile(r" *[+-]?([0-9]+\.?[0-9]*|\.[0-9]+)([eE][+-]?[0-9]+)? *")
+_WORDS = re.compile(
+    r"jan(uary)?|feb(ruary)?|mar(ch)?|apr(il)?|may|june?|july?|aug(ust)?|sep(t(ember)?)?"
+    r"|oct(ober)?|nov(ember)?|dec(ember)?|(mon|tues?|wed(nes)?|thu(rs)?|fri|sat(ur)?|sun)(day)?"
+    r"|(?<=[0-9 ])[ap]m|(?<=[0-9])t(?=[0-9])|(?<=[0-9. ])e(?=[ 0-9+-])"
+)
+_PERHAPS_A_NUMBER = re.compile(r"(?=.*\d)[\s\d+\-.,:/%()=$€£¥]+", re.DOTALL)
 
 
 class NotHere(Exception):
     """A use of an operator or a function that this engine does not know."""
+
+
+class PassedOn(float):
+    """The 0 that a formula leaves which refers to an empty cell: to LibreOffice also empty."""
 
 
 _CLOSE, _FAR = 2.0**-48, 2.0**-44
@@ -38,8 +49,21 @@ def number(value: Scalar) -> float | ErrorKind:
     if isinstance(value, ErrorKind):
         return value
     if isinstance(value, str):
-        return finite(float(value)) if _NUMBER.fullmatch(value) else ErrorKind.VALUE
+        plain = bool(_NUMBER.fullmatch(value))
+        if plain and math.isfinite(float(value)):
+            return float(value)
+        if plain or _may_be_a_number(value):
+            raise NotHere(f'the text "{value}" for a number')
+        return ErrorKind.VALUE
     return float(value)
+
+
+def _may_be_a_number(text: str) -> bool:
+    """Whether some spreadsheet reads a text as a number: a percentage, a date, a sum of money."""
+    text = unicodedata.normalize("NFKC", text).strip().lower()
+    if text in ("true", "false"):
+        return True
+    return len(text) < 40 and bool(_PERHAPS_A_NUMBER.fullmatch(_WORDS.sub("", text)))
 
 
 def text(value: Scalar) -> str | ErrorKind:
@@ -87,17 +111,26 @@ def nearly_equal(a: float, b: float) -> bool:
     return distance < a * _CLOSE and distance < b * _CLOSE
 
 
+def folded(text: str) -> str:
+    """A text without regard to case, letter by letter: ß stays one letter."""
+    if text.isascii():
+        return text.lower()
+    return "".join(c if len(c.casefold()) > 1 else c.casefold() for c in text)
+
+
 def compared(a: Scalar, b: Scalar) -> int | ErrorKind:
     """-1, 0 or 1: numbers before texts, texts without regard to case; TRUE and FALSE are 1, 0."""
     for value in (a, b):
         if isinstance(value, ErrorKind):
             return value
     if isinstance(a, str) or isinstance(b, str):
+        if isinstance(a, PassedOn) or isinstance(b, PassedOn):
+            raise NotHere("a comparison of a text with a cell that refers to an empty one")
         if not isinstance(a, str) and a is not None:
             return -1
         if not isinstance(b, str) and b is not None:
             return 1
-        left, right = str(a or "").casefold(), str(b or "").casefold()
+        left, right = folded(str(a or "")), folded(str(b or ""))
         return (left > right) - (left < right)
     x, y = float(a or 0.0), float(b or 0.0)  # type: ignore[arg-type]
     return 0 if nearly_equal(x, y) else (x > y) - (x < y)
@@ -105,7 +138,7 @@ def compared(a: Scalar, b: Scalar) -> int | ErrorKind:
 
 def in_order(a: Scalar, b: Scalar) -> int | ErrorKind:
     """As `compared`, for < and >: of texts only plain letters and digits have a known order."""
-    if isinstance(a, str) and isinstance(b, str) and a.casefold() != b.casefold():
+    if isinstance(a, str) and isinstance(b, str) and folded(a) != folded(b):
         both = a + b
         if not (both.isascii() and both.isalnum()):
             raise NotHere("the order of texts other than plain letters and digits")
@@ -121,7 +154,7 @@ def truth(value: Scalar) -> bool | ErrorKind:
 def each(function: Callable[..., Scalar], *values: Value) -> Value:
     """A function of scalars, element by element where a value is a grid.
 
-    A single row or column stretches; where shapes leave an element without a partner it is #N/A.
+    A single row or column stretches; other shapes that differ are refused.
     """
     if not any(type(value) is list for value in values):
         return function(*values)
@@ -129,12 +162,11 @@ def each(function: Callable[..., Scalar], *values: Value) -> Value:
     height = max(len(grid) for grid in grids)
     width = max(len(grid[0]) for grid in grids)
 
+    if any(len(g) not in (1, height) or len(g[0]) not in (1, width) for g in grids):
+        raise NotHere("ranges of different sizes, element by element")
+
     def element(grid: Grid, row: int, column: int) -> Scalar:
-        row = 0 if len(grid) == 1 else row
-        column = 0 if len(grid[0]) == 1 else column
-        if row < len(grid) and column < len(grid[0]):
-            return grid[row][column]
-        return ErrorKind.NA
+        return grid[0 if len(grid) == 1 else row][0 if len(grid[0]) == 1 else column]
 
     return [
         [function(*(element(grid, row, column) for grid in grids)) for column in range(width)]
