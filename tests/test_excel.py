@@ -6,8 +6,12 @@ What only a real Excel can show is listed in DEVELOPERS.md and settled by tests/
 from __future__ import annotations
 
 import datetime
+import io
 import re
+import subprocess
+import sys
 import time
+import zipfile
 from decimal import Decimal
 from pathlib import Path
 from types import SimpleNamespace
@@ -18,7 +22,7 @@ import windows_stand_in as windows
 from oletools.olevba import VBA_Parser
 
 from tausheet.addin import cells
-from tausheet.addin.excel import addin_file, installation, names, registration, wrappers
+from tausheet.addin.excel import addin_file, bridge, installation, names, registration, wrappers
 from tausheet.addin.excel.refresh import refresh_app, relinked
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import ErrorKind, TausheetError
@@ -68,7 +72,7 @@ def test_every_name_can_be_used_in_excel() -> None:
         for parameter in entry.parameters:
             whole = f"{parameter.help} (required)"
             assert len(whole) <= names.LONGEST_DESCRIPTION, f"{entry.name}: {parameter.name}"
-    assert names.collisions(CATALOGUE, ["xlwings", wrappers.MODULE, "Dictionary", "Module1"]) == []
+    assert names.collisions(CATALOGUE, [*bridge.OWN_NAMES, bridge.MODULE, "Sheet2"]) == []
 
 
 @pytest.mark.parametrize(
@@ -128,6 +132,24 @@ def test_an_error_cell_comes_out_unchanged_alone_and_in_a_range(kind: ErrorKind)
     assert excel("FO_STEP", column, 1.0, 0.0, 5.0)[1] == [NUMBER[kind]]
 
 
+def test_several_areas_in_one_argument_are_an_error_and_not_the_first_of_them() -> None:
+    assert excel("FO_PARALLEL", windows.Range(((1.0,), (2.0,)), areas=2)) == NUMBER[ErrorKind.VALUE]
+
+
+def test_numbers_of_visual_basic_are_numbers_too() -> None:
+    day = windows.PyTime(1900, 1, 1, tzinfo=datetime.timezone.utc)
+    assert excel("FO_TAU_RC", Decimal("2"), day) == 4.0
+
+
+def test_whole_columns_are_read_as_far_as_they_are_used() -> None:
+    blank = ((None,),) * (2**20 - 3)
+    times = windows.Range(((0.0,), (1.0,), (2.0,), *blank))
+    levels = windows.Range(((0.0,), (1.0,), (1.0,), *blank))
+    points = [[[0.0], [1.0], [2.0]], [[0.0], [1.0], [1.0]]]
+    expected = cells.call("FO_TABLE", [0.5, 1.0, 0.0, *points])
+    assert excel("FO_TABLE", 0.5, 1.0, 0.0, times, levels) == expected
+
+
 def test_an_error_of_a_newer_excel_is_an_error_too() -> None:
     spilled = registration.ERROR_BASE + 2045
     assert excel("FO_STEP", windows.Range(spilled), 1.0, 0.0, 5.0) == NUMBER[ErrorKind.VALUE]
@@ -158,55 +180,135 @@ def test_a_call_that_hangs_gives_an_error_and_the_next_one_works(
     assert excel("FO_STEP", 1.0, 1.0, 0.0, 5.0) == cells.call("FO_STEP", [1.0, 1.0, 0.0, 5.0])
 
 
+def test_a_call_that_stops_every_thread_ends_this_python_and_a_long_wait_does_not() -> None:
+    script = """
+import re, sys, time
+from tausheet.addin.excel import registration
+registration.END_LIMIT = 1.0
+registration.end_when_stuck()
+time.sleep(2.5)
+print("waited", flush=True)
+re.match("(a+)+$", 60 * "a" + "b")  # never gives another thread its turn
+print("came back", flush=True)
+"""
+    command = [sys.executable, "-c", script]
+    done = subprocess.run(command, capture_output=True, text=True, timeout=60)
+    assert done.returncode != 0
+    assert done.stdout == "waited\n"
+
+
+def test_nothing_listens_on_a_network_address() -> None:
+    script = """
+import os, sys
+sys.path.insert(0, "tests")
+import windows_stand_in as windows
+assert windows.call("tausheet.addin.excel.worksheet_functions", "FO_TAU_RC", 2.0, 3.0) == 6.0
+links = [f"/proc/self/fd/{fd}" for fd in os.listdir("/proc/self/fd")]
+own = {os.readlink(link) for link in links if os.path.lexists(link)}
+for table in ("tcp", "tcp6", "udp", "udp6"):
+    for line in open(f"/proc/self/net/{table}").readlines()[1:]:
+        inode = line.split()[9]
+        assert f"socket:[{inode}]" not in own, line
+"""
+    root = Path(__file__).resolve().parent.parent
+    done = subprocess.run(
+        [sys.executable, "-c", script], capture_output=True, text=True, timeout=60, cwd=root
+    )
+    assert done.returncode == 0, done.stderr
+
+
 def test_the_wrappers_return_real_errors_and_hand_no_workbook_over(sources: dict[str, str]) -> None:
-    text = sources[f"{wrappers.MODULE}.bas"]
+    text = sources[f"{bridge.MODULE}.bas"]
     for name in CATALOGUE:
         body = re.search(rf"(?ms)^Function {name}\(.*?^End Function", text)
         assert body is not None, name
-        assert body[0].count("InCells(XLPy.CallUDF(") == 2
+        assert body[0].count(f'InCells(XLPy.CallUDF("{wrappers.PYTHON_MODULE}", "{name}", G') == 2
         assert body[0].count("ErrorFrom(Err.Description)") == 1
+        assert body[0].count("On Error GoTo failed") == 1
     assert "ActiveWorkbook" not in text
-    assert "Err.Description)" in text
+    assert "Caller" not in text
     assert "= Err.Description" not in text
 
 
-def test_no_workbook_can_choose_what_runs(sources: dict[str, str]) -> None:
-    text = sources["xlwings.bas"]
-    assert 'PROJECT_NAME As String = "tausheet"' in text
-    assert "SheetExists(ActiveWorkbook, PROJECT_NAME" not in text
-    config = re.search(r"(?ms)^Function GetConfig\(.*?^End Function", text)
-    assert config is not None
-    assert config[0].count("If False Then") == 3
-    command = re.search(r"(?ms)^Function XLPyCommand\(.*?^End Function", text)
+def test_a_formula_can_reach_the_cell_functions_and_nothing_else(sources: dict[str, str]) -> None:
+    """Every public function of an open add-in can be called from any workbook's cells."""
+    assert set(sources) == {"ThisWorkbook.cls", "Sheet2.cls", f"{bridge.MODULE}.bas"}
+    begun = re.compile(
+        r"(?im)^\s*(Public |Friend |Private )?(Static )?(Function|Sub|Property) (\w+)"
+    )
+    for text in sources.values():
+        for scope, _, kind, name in begun.findall(text):
+            if scope.strip() != "Private":
+                assert name in CATALOGUE or (kind, name) in {
+                    ("Function", "TausheetLastFailure"),
+                    ("Sub", "Auto_Open"),
+                }
+    text = sources[f"{bridge.MODULE}.bas"]
+    code = "\n".join(line for line in text.splitlines() if not line.startswith("'"))
+    for word in ("Shell", "CreateObject", "GetObject", "Environ", "Kill ", "Open ", "cmd"):
+        assert word not in code
+
+
+def test_what_runs_is_a_constant(sources: dict[str, str]) -> None:
+    text = sources[f"{bridge.MODULE}.bas"]
+    command = re.search(r"(?ms)^Private Function PythonCommand.*?^End Function", text)
     assert command is not None
-    assert 'PYTHONPATH = "false;;;;;"' in command[0]
-    assert "ActiveWorkbook" not in command[0]
-    assert " -I -B -c " in command[0]
+    assert command[0].splitlines()[1].strip() == (
+        r'PythonCommand = """C:\Users\engineer\venv\Scripts\pythonw.exe"" -I -B -c '
+        '""import xlwings; xlwings.serve(\'$(CLSID)\')"""'
+    )
 
 
-def test_what_the_command_line_makes_of_the_path_adds_nothing() -> None:
-    import sys
+def test_names_of_the_module_are_refused_as_arguments() -> None:
+    for name in bridge.OWN_NAMES:
+        assert names.problems("FO_X", [name], variadic=False, optional=0)
 
-    from xlwings.utils import prepare_sys_path
 
-    before = list(sys.path)
-    prepare_sys_path("false;;;;;")
-    assert sys.path == before
+@pytest.mark.parametrize(
+    ("text", "written"),
+    [
+        ('say "x"', '"say ""x"""'),
+        ("47 kΩ", '"47 k" & ChrW(937)'),
+        ("µ", "ChrW(181)"),
+        ("", '""'),
+        ("a😀b", '"a" & ChrW(55357) & ChrW(56832) & "b"'),
+    ],
+)
+def test_a_text_is_written_as_vba_reads_it_in_any_code_page(text: str, written: str) -> None:
+    assert bridge.literal(text) == written
+
+
+def test_the_lines_fit_into_vba(sources: dict[str, str]) -> None:
+    lines = sources[f"{bridge.MODULE}.bas"].splitlines()
+    assert max(map(len, lines)) <= 1023
+    continued = 0
+    for line in lines:
+        continued = continued + 1 if line.endswith(" _") else 0
+        assert continued <= 24
+
+
+def test_an_xlwings_of_another_shape_is_refused(monkeypatch: pytest.MonkeyPatch) -> None:
+    with pytest.raises(bridge.ChangedShape, match="its DLL"):
+        bridge.head("nothing of what is looked for")
+    real = XLWINGS.udfs.generate_vba_wrapper
+
+    def other(module_name: str, module: Any, file: Any, book: Any) -> None:
+        buffer = io.StringIO()
+        real(module_name, module, buffer, book)
+        file.write(buffer.getvalue().replace("Err.Description", "Err.Number"))
+
+    monkeypatch.setattr(XLWINGS.udfs, "generate_vba_wrapper", other)
+    with pytest.raises(bridge.ChangedShape, match="a form that this version does not know"):
+        addin_file.contents(PYTHON, XLWINGS.udfs)
 
 
 def test_the_file_says_what_it_was_made_from(built: Path) -> None:
-    found = addin_file.read_configuration(built)
-    assert found["INTERPRETER_WIN"] == r"C:\Users\engineer\venv\Scripts\pythonw.exe"
-    assert found["UDF MODULES"] == "tausheet.addin.excel.worksheet_functions"
-    assert installation.status(built) == [installation.status(built)[0]]
-    assert '"tausheet"' in found[addin_file.STAMP]
-
-
-def test_status_asks_for_a_repair_when_the_versions_differ(
-    built: Path, monkeypatch: pytest.MonkeyPatch
-) -> None:
-    monkeypatch.setattr(addin_file, "stamp", lambda source: "another")
-    assert "needs a repair" in installation.status(built)[1]
+    found = addin_file.read_stamp(built)
+    assert found["interpreter"] == r"C:\Users\engineer\venv\Scripts\pythonw.exe"
+    assert set(found) == {"tausheet", "xlwings", "interpreter", "contents"}
+    assert len(installation.status(built)) == 1
+    with zipfile.ZipFile(built) as package:
+        assert b"creator" not in package.read("docProps/core.xml")
 
 
 def test_the_same_input_gives_the_same_file(built: Path, tmp_path: Path) -> None:
@@ -215,7 +317,9 @@ def test_the_same_input_gives_the_same_file(built: Path, tmp_path: Path) -> None
     assert again.read_bytes() == built.read_bytes()
 
 
-@pytest.mark.parametrize("bad", ["python", r"C:\a;b\python.exe", r"%TEMP%\python.exe", ""])
+@pytest.mark.parametrize(
+    "bad", ["python", r"C:\a$(b)\python.exe", r"%TEMP%\python.exe", r"C:\"\python.exe", ""]
+)
 def test_an_interpreter_that_is_no_plain_full_path_is_refused(bad: str, tmp_path: Path) -> None:
     with pytest.raises(TausheetError, match="full Windows path"):
         addin_file.make(tmp_path / "x.xlam", bad, XLWINGS.udfs)
@@ -246,7 +350,7 @@ def test_a_file_that_is_no_add_in_is_said_to_be_none(content: bytes, tmp_path: P
     path = tmp_path / "x.xlam"
     path.write_bytes(content)
     with pytest.raises(TausheetError, match="not an add-in file"):
-        addin_file.read_configuration(path)
+        addin_file.read_stamp(path)
 
 
 @pytest.mark.parametrize(

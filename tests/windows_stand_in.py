@@ -20,6 +20,7 @@ import subprocess  # noqa: F401
 import sys
 import tempfile  # noqa: F401
 import types
+from decimal import Decimal
 from typing import Any
 
 import numpy as np  # noqa: F401
@@ -27,7 +28,8 @@ import numpy as np  # noqa: F401
 MISSING = -2147352572
 """DISP_E_PARAMNOTFOUND: an argument left out, as pywin32 hands it to Python."""
 
-_RANGE_IID = "{00020846-0000-0000-C000-000000000046}"
+ERROR_BASE = -2146828288
+"""0x800A0000: an error cell reaches Python as this plus its number."""
 
 
 class ComError(Exception):
@@ -188,39 +190,28 @@ def install() -> types.SimpleNamespace:
 
 
 class Range:
-    """As much of Excel's Range as an argument or the calling cell needs."""
+    """Cells as an argument; `value` as Excel's Value hands it over: one, or a tuple of rows."""
 
-    def __init__(self, value: Any = None) -> None:
-        self.Value = self.Value2 = value
-        rows = value if isinstance(value, tuple) else ((value,),)
-        self.Rows = types.SimpleNamespace(Count=len(rows))
-        self.Columns = types.SimpleNamespace(Count=len(rows[0]))
-        self.Row = self.Column = 1
-        self.Count = len(rows) * len(rows[0])
-        self.Worksheet = types.SimpleNamespace(Name="Sheet1", Parent=Book())
-        self.Address = "$A$1"
-        attributes = types.SimpleNamespace(iid=IID(_RANGE_IID))
-        type_info = types.SimpleNamespace(GetTypeAttr=lambda: attributes)
-        self._oleobj_ = types.SimpleNamespace(GetTypeInfo=lambda: type_info)
+    def __init__(self, value: Any = None, areas: int = 1) -> None:
+        self.value, self.areas = value, areas
 
-    def GetAddress(self, *_: Any, **__: Any) -> str:
-        return self.Address
+    def given(self) -> Any:
+        """What the wrapper's VBA hands over: Value2, in which currencies and dates are numbers."""
+        if self.areas > 1:
+            return ERROR_BASE + 2015
+        if isinstance(self.value, tuple):
+            return tuple(tuple(map(_value2, row)) for row in self.value)
+        return _value2(self.value)
 
 
-class Book:
-    """As much of Excel's Workbook as a call needs."""
-
-    def __init__(self) -> None:
-        self.Name = "tausheet.xlam"
-        self.Sheets: list[Any] = []
-        self.Worksheets: list[Any] = []
-        self.Application = types.SimpleNamespace(Hwnd=1, Version="16.0")
+def _value2(value: Any) -> Any:
+    if isinstance(value, datetime.datetime):
+        start = datetime.datetime(1899, 12, 30)
+        return (value.replace(tzinfo=None) - start) / datetime.timedelta(days=1)
+    return float(value) if isinstance(value, Decimal) else value
 
 
 def call(module: str, function: str, *arguments: Any) -> Any:
     """=FUNCTION(arguments) in a cell, through xlwings' real CallUDF; what COM would carry back."""
-    server = install().server
-    wrapped = tuple(Dispatchable(a) if isinstance(a, Range) else a for a in arguments)
-    return server.CallUDF(
-        module, function, wrapped, Dispatchable(Book()), Dispatchable(Range(None))
-    )
+    given = tuple(a.given() if isinstance(a, Range) else a for a in arguments)
+    return install().server.CallUDF(module, function, given)

@@ -3,11 +3,16 @@
 from __future__ import annotations
 
 import os
+import subprocess
 import sys
+from collections.abc import Iterator
+from contextlib import contextmanager, suppress
 from pathlib import Path
+from typing import Any
 
-from tausheet.addin.excel import addin_file, wrappers
+from tausheet.addin.excel import addin_file, bridge, wrappers
 from tausheet.addin.excel.generator import generator
+from tausheet.addin.files import replacing
 from tausheet.functions.errors import TausheetError
 
 NOT_WINDOWS = (
@@ -15,6 +20,8 @@ NOT_WINDOWS = (
     "`tausheet install excel --to FILE` writes the add-in file for carrying over, and "
     "`tausheet install calc` puts the functions into LibreOffice Calc."
 )
+_REPAIR = "run `tausheet install excel`"
+_TRIAL_LIMIT = 120.0
 
 
 class NotInstalled(TausheetError):
@@ -40,23 +47,27 @@ def install(to: Path | None = None, interpreter: str | None = None, force: bool 
                 r"Windows machine: --interpreter C:\...\Scripts\pythonw.exe"
             )
         interpreter = sys.executable
-    target = to if to is not None else start_up_folder() / addin_file.FILE_NAME
-    if to is not None and to.exists() and not force:
-        raise NotInstalled(f"{to} exists; give --force to overwrite it")
-    if to is None:
-        target.parent.mkdir(parents=True, exist_ok=True)
-        _closed_everywhere()
-    temporary = target.with_name(f".{target.name}.new")
-    try:
-        functions = addin_file.make(temporary, interpreter, generator())
-        os.replace(temporary, target)
-    except OSError as error:
-        raise NotInstalled(f"{target} could not be written: {error.strerror}") from None
-    finally:
-        temporary.unlink(missing_ok=True)
     if to is not None:
-        return f"{target}: an add-in with {len(functions)} functions; open it in Excel on Windows."
-    return f"Excel: {len(functions)} functions in {target}; restart Excel to see them."
+        with replacing(to, force=force) as temporary:
+            functions = addin_file.make(temporary, interpreter, generator())
+        return f"{to}: an add-in with {len(functions)} functions; open it in Excel on Windows."
+    _try_out(interpreter)
+    target = start_up_folder() / addin_file.FILE_NAME
+    # made outside the folder: Excel opens whatever lies in it
+    made = target.parent.parent / f"{addin_file.FILE_NAME}.new"
+    try:
+        target.parent.mkdir(parents=True, exist_ok=True)
+        functions = addin_file.make(made, interpreter, generator())
+        with _closed_everywhere(target):
+            os.replace(made, target)
+    except OSError as error:
+        raise NotInstalled(
+            f"{target} could not be written ({error.strerror}); close Excel and try again"
+        ) from None
+    finally:
+        with suppress(OSError):
+            made.unlink(missing_ok=True)
+    return f"Excel: {len(functions)} functions in {target}; restart Excel where it is open."
 
 
 def uninstall() -> str:
@@ -66,9 +77,9 @@ def uninstall() -> str:
     target = start_up_folder() / addin_file.FILE_NAME
     if not target.exists():
         return "Excel: the add-in is not installed."
-    _closed_everywhere()
     try:
-        target.unlink()
+        with _closed_everywhere(target):
+            target.unlink()
     except OSError as error:
         raise NotInstalled(
             f"{target} could not be removed ({error.strerror}); close Excel and try again"
@@ -81,31 +92,89 @@ def status(path: Path | None = None) -> list[str]:
     if path is None:
         if sys.platform != "win32":
             return [f"Excel: not here. {NOT_WINDOWS}"]
-        path = start_up_folder() / addin_file.FILE_NAME
+        try:
+            path = start_up_folder() / addin_file.FILE_NAME
+        except NotInstalled as error:
+            return [f"Excel: {error}."]
     if not path.exists():
-        return ["Excel: the add-in is not installed; run `tausheet install excel`."]
-    found = addin_file.read_configuration(path)
-    interpreter = found.get("INTERPRETER_WIN", "")
-    lines = [f"Excel: {path}, made as {found.get(addin_file.STAMP, 'unknown')}, {interpreter}."]
-    wanted = addin_file.stamp(wrappers.wrapper_text(generator(), addin_file.FILE_NAME)[0])
-    if found.get(addin_file.STAMP) != wanted:
-        lines.append(
-            f"Excel: the add-in needs a repair, since this version makes it as {wanted}; run "
-            "`tausheet install excel`."
-        )
-    if sys.platform == "win32" and not Path(interpreter).exists():
-        lines.append(
-            f"Excel: the add-in needs a repair, since {interpreter} is gone; run "
-            "`tausheet install excel`."
-        )
-    return lines
+        return [f"Excel: the add-in is not installed; {_REPAIR}."]
+    try:
+        found = addin_file.read_stamp(path)
+        wrong = _out_of_order(found)
+    except TausheetError as error:
+        return [f"Excel: {error}; {_REPAIR}."]
+    lines = [
+        f"Excel: {path}, made by tausheet {found.get('tausheet')} with xlwings "
+        f"{found.get('xlwings')}, starts {found.get('interpreter')}."
+    ]
+    return [*lines, *(f"Excel: the add-in needs a repair: {each}; {_REPAIR}." for each in wrong)]
 
 
-def _closed_everywhere() -> None:
-    """Close the add-in in every running Excel, which would otherwise hold its file."""
+def _out_of_order(found: dict[str, str]) -> list[str]:
+    """What is no longer as it was when the add-in file was made."""
+    interpreter = found.get("interpreter", "")
+    wanted = addin_file.contents(interpreter, generator())[2]
+    wrong = [
+        f"it was made with {key} {found.get(key)}, and {wanted[key]} is installed"
+        for key in ("tausheet", "xlwings")
+        if found.get(key) != wanted[key]
+    ]
+    if not wrong and found != wanted:
+        wrong.append("its functions are not those of this version")
+    if sys.platform == "win32":
+        if not Path(interpreter).exists():
+            wrong.append(f"{interpreter} is gone")
+        else:
+            wrong += _missing_dll(Path(interpreter), found.get("xlwings", ""))
+    return wrong
+
+
+def _missing_dll(interpreter: Path, xlwings_version: str) -> list[str]:
+    """Nothing when a DLL is where the add-in looks for it, beside Python or one folder above."""
+    names = [bridge.dll_name(bits, xlwings_version) for bits in (64, 32)]
+    places = (interpreter.parent, interpreter.parent.parent)
+    if any((place / name).exists() for place in places for name in names):
+        return []
+    return [f"{names[0]} is missing beside {interpreter}, where xlwings was upgraded or removed"]
+
+
+def _try_out(interpreter: str) -> None:
+    """Refuse a Python that cannot load the functions when started as Excel starts it."""
+    bridge.without_console(interpreter)
+    command = [interpreter, "-I", "-B", "-c", f"import xlwings, {wrappers.PYTHON_MODULE}"]
+    try:
+        done = subprocess.run(
+            command, capture_output=True, text=True, timeout=_TRIAL_LIMIT, stdin=subprocess.DEVNULL
+        )
+    except (OSError, subprocess.TimeoutExpired) as error:
+        raise NotInstalled(f"{interpreter} cannot be started: {error}") from None
+    if done.returncode:
+        said = (done.stderr.strip().splitlines() or ["it says nothing"])[-1]
+        raise NotInstalled(
+            f'{interpreter} cannot load the functions ({said}); install "tausheet[excel]" there'
+        )
+
+
+@contextmanager
+def _closed_everywhere(target: Path) -> Iterator[None]:
+    """Close the add-in in every running Excel, which holds its file, and open it again."""
     import xlwings
 
+    closed = []
     for app in list(xlwings.apps):
-        for book in list(app.books):
-            if book.name.casefold() == addin_file.FILE_NAME:
-                book.close()
+        # an add-in is not among the workbooks that can be counted, but answers to its name
+        with suppress(Exception):
+            app.api.Workbooks(target.name).Close(False)
+            closed.append(app)
+    try:
+        yield
+    finally:
+        for app in closed:
+            _open_again(app, target)
+
+
+def _open_again(app: Any, target: Path) -> None:
+    if target.exists():
+        # the file is in place; where Excel refuses, its next start opens it
+        with suppress(Exception):
+            app.api.Workbooks.Open(str(target))

@@ -5,6 +5,8 @@ from __future__ import annotations
 import re
 from collections.abc import Iterable, Sequence
 
+from tausheet.addin.excel import bridge
+
 # [MS-VBAL] 3.3.5.2, reserved identifiers; case does not count
 _RESERVED = """
     Call Case Close Const Declare DefBool DefByte DefCur DefDate DefDbl DefInt DefLng DefLngLng
@@ -28,15 +30,14 @@ _CONTEXTUAL = """
 """
 # what the generated wrapper uses inside each function, and the argument that xlwings fills itself
 _IN_THE_WRAPPER = """
-    XLPy Application ActiveWorkbook ThisWorkbook Err Range App argsArray failed k caller
-    InCell InCells ErrorFrom
+    Application ActiveWorkbook ThisWorkbook Err Range App argsArray failed k caller
 """
 RESERVED = {
     word.casefold(): why
     for words, why in (
         (_RESERVED, "a reserved word of VBA"),
         (_CONTEXTUAL, "a word that VBA reads differently in some places"),
-        (_IN_THE_WRAPPER, "used by the generated wrapper"),
+        (f"{_IN_THE_WRAPPER} {' '.join(bridge.OWN_NAMES)}", "used by the generated wrapper"),
     )
     for word in words.split()
 }

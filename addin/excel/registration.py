@@ -3,16 +3,20 @@
 from __future__ import annotations
 
 import datetime
+import faulthandler
 import inspect
-from collections.abc import Callable
-from concurrent.futures import ThreadPoolExecutor
-from concurrent.futures import TimeoutError as TooLong
+import os
+import queue
+import threading
+import time
+from collections.abc import Callable, Sequence
 from decimal import Decimal
 from typing import Any
 
 import numpy as np
 
 from tausheet.addin import cells
+from tausheet.addin.calc.answer import trimmed
 from tausheet.addin.excel import names
 from tausheet.functions.arguments import Parameter
 from tausheet.functions.catalogue import CATALOGUE, CellFunction
@@ -35,6 +39,9 @@ _DAY_0 = datetime.datetime(1899, 12, 30)
 
 TIME_LIMIT = 60.0
 """Seconds after which a call gives an error instead of holding Excel up."""
+
+END_LIMIT = 90.0
+"""Seconds after which this Python ends, when not even the time limit could be kept."""
 
 
 class NameRefused(TausheetError):
@@ -70,18 +77,52 @@ def _shown(value: Any) -> Any:
     return ERROR_BASE + EXCEL_NUMBERS[value] if isinstance(value, ErrorKind) else value
 
 
-_threads = ThreadPoolExecutor(max_workers=4, thread_name_prefix="tausheet")
+class _Worker:
+    """A thread that makes one call at a time; one that hangs is left behind."""
+
+    def __init__(self) -> None:
+        self._calls: queue.SimpleQueue[tuple[str, Sequence[Any]]] = queue.SimpleQueue()
+        self._results: queue.SimpleQueue[cells.Raw] = queue.SimpleQueue()
+        # a daemon, so that a call that hangs does not keep Python from ending
+        threading.Thread(target=self._work, daemon=True, name="tausheet").start()
+
+    def _work(self) -> None:
+        while True:
+            self._results.put(cells.call(*self._calls.get()))
+
+    def call(self, name: str, arguments: Sequence[Any]) -> cells.Raw:
+        """The result; queue.Empty when it takes longer than the time limit."""
+        self._calls.put((name, arguments))
+        return self._results.get(timeout=TIME_LIMIT)
 
 
-def _within_the_time(name: str, arguments: list[Any]) -> cells.Raw:
-    """A call in a thread of its own: one that hangs is left behind, and the next one works."""
-    global _threads
+_worker = _Worker()
+
+
+def _within_the_time(name: str, arguments: Sequence[Any]) -> cells.Raw:
+    """A call that hangs gives an error, and the next one works."""
+    global _worker
     try:
-        return _threads.submit(cells.call, name, arguments).result(TIME_LIMIT)
-    except TooLong:
-        _threads.shutdown(wait=False, cancel_futures=True)
-        _threads = ThreadPoolExecutor(max_workers=4, thread_name_prefix="tausheet")
+        return _worker.call(name, arguments)
+    except queue.Empty:
+        _worker = _Worker()
         return ErrorKind.VALUE.nan
+
+
+def end_when_stuck() -> None:
+    """End this Python when one call stops every thread of it, so that no time limit is kept.
+
+    Excel then shows the error and starts another Python for the next call. The alarm is put off
+    again and again by a thread, which only a stuck Python keeps from doing so.
+    """
+    nowhere = open(os.devnull, "w")  # noqa: SIM115 - open as long as this Python runs
+
+    def put_off() -> None:
+        while True:
+            faulthandler.dump_traceback_later(END_LIMIT, exit=True, file=nowhere)
+            time.sleep(END_LIMIT / 10)
+
+    threading.Thread(target=put_off, daemon=True, name="tausheet alarm").start()
 
 
 def description(entry: CellFunction) -> str:
@@ -113,7 +154,8 @@ def expose(entry: CellFunction, xlwings: Any) -> Callable[..., Any]:
     check_names(entry)
 
     def udf(*arguments: Any) -> Any:
-        return to_excel(_within_the_time(entry.name, [from_excel(a) for a in arguments]))
+        given = [from_excel(argument) for argument in trimmed(arguments)]
+        return to_excel(_within_the_time(entry.name, given))
 
     udf.__name__ = udf.__qualname__ = entry.name
     udf.__doc__ = description(entry)

@@ -7,8 +7,9 @@ version is set to 0xFFFF, so that the host compiles the sources when it opens th
 from __future__ import annotations
 
 import io
+import re
 import struct
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping, Sequence
 
 _CHUNK = 4096
 
@@ -97,34 +98,25 @@ def decompress(data: bytes) -> bytes:
     return bytes(out)
 
 
-def rebuilt(
-    project: bytes,
-    edit: Mapping[str, Callable[[str], str]],
-    add: Mapping[str, str],
-    name: str,
-) -> bytes:
-    """The project with some modules' sources edited, others added, under another name."""
+def rebuilt(project: bytes, modules: Mapping[str, str], name: str) -> bytes:
+    """The project under another name, with these modules in place of its own.
+
+    What belongs to the workbook and its sheets stays, since the file refers to it.
+    """
     import olefile  # in the extra "excel": only making the add-in file needs it
 
     ole = olefile.OleFileIO(io.BytesIO(project))
 
-    def read(*path: str) -> bytes:
-        data: bytes = ole.openstream("/".join(path)).read()
+    def read(path: str) -> bytes:
+        data: bytes = ole.openstream(path).read()
         return data
 
-    directory, sources = _directory(read, edit, add, name)
-    sources.update(add)
     text = read("PROJECT").decode("cp1252")
-    old_name = text.split('Name="')[1].split('"')[0]
-    text = text.replace(f'Name="{old_name}"', f'Name="{name}"', 1)
-    at = text.index("Class=") if "Class=" in text else text.index("Module=")
-    text = text[:at] + "".join(f"Module={module}\r\n" for module in add) + text[at:]
-    names = read("PROJECTwm")[:-2]
-    for module in add:
-        names += module.encode() + b"\0" + module.encode("utf-16le") + b"\0\0"
+    documents = re.findall(r"(?m)^Document=(\w+)/", text)
+    directory, sources = _directory(read, documents, modules, name)
     streams = {
-        ("PROJECT",): text.encode("cp1252"),
-        ("PROJECTwm",): names + b"\0\0",
+        ("PROJECT",): _properties(text, modules, name).encode("cp1252"),
+        ("PROJECTwm",): b"".join(map(_both_names, sources)) + b"\0\0",
         ("VBA", "_VBA_PROJECT"): b"\xcc\x61\xff\xff\x00\x01\x00",
         ("VBA", "dir"): compress(directory),
     }
@@ -133,35 +125,64 @@ def rebuilt(
     return compound_file(streams)
 
 
+def source_of(project: bytes, module: str) -> str:
+    """The source of one module."""
+    import olefile
+
+    ole = olefile.OleFileIO(io.BytesIO(project))
+    directory = decompress(ole.openstream("VBA/dir").read())
+    offsets, stream = {}, ""
+    for kind, _, data in _records(directory):
+        if kind == _STREAM_NAME:
+            stream = data.decode("cp1252")
+        elif kind == _SOURCE_OFFSET:
+            (offsets[stream],) = struct.unpack("<I", data)
+    packed = ole.openstream(f"VBA/{module}").read()[offsets[module] :]
+    return decompress(packed).decode("cp1252")
+
+
+def _properties(text: str, modules: Iterable[str], name: str) -> str:
+    """The PROJECT stream; where editor windows stood is left out."""
+    text = re.sub(r"(?m)^(Module|Class)=.*\r\n", "", text).partition("[Workspace]")[0]
+    listed = "".join(f"Module={module}\r\n" for module in modules)
+    return re.sub(r'(?m)^Name="[^"]*"', lambda _: f'{listed}Name="{name}"', text)
+
+
+def _both_names(module: str) -> bytes:
+    return module.encode("cp1252") + b"\0" + module.encode("utf-16le") + b"\0\0"
+
+
 # records of the dir stream, [MS-OVBA] 2.3.4.2
 _PROJECT_NAME, _VERSION, _MODULE_COUNT, _END = 0x04, 0x09, 0x0F, 0x10
-_STREAM_NAME, _SOURCE_OFFSET = 0x1A, 0x31
+_MODULE_NAME, _STREAM_NAME, _SOURCE_OFFSET, _MODULE_END = 0x19, 0x1A, 0x31, 0x2B
 
 
 def _directory(
-    read: Callable[..., bytes],
-    edit: Mapping[str, Callable[[str], str]],
-    add: Mapping[str, str],
-    name: str,
+    read: Callable[[str], bytes], documents: Sequence[str], modules: Mapping[str, str], name: str
 ) -> tuple[bytes, dict[str, str]]:
     """The rewritten dir stream, and the source of every module in it."""
-    out, sources, stream = [], {}, ""
-    for kind, size, data in _records(decompress(read("VBA", "dir"))):
+    out: list[bytes] = []
+    sources: dict[str, str] = {}
+    stream, dropped = "", False
+    for kind, size, data in _records(decompress(read("VBA/dir"))):
         if kind == _PROJECT_NAME:
             data = name.encode("latin1")
         elif kind == _MODULE_COUNT:
-            data = struct.pack("<H", struct.unpack("<H", data)[0] + len(add))
+            data = struct.pack("<H", len(documents) + len(modules))
+        elif kind == _MODULE_NAME:
+            dropped = data.decode("cp1252") not in documents
         elif kind == _STREAM_NAME:
-            stream = data.decode("latin1")
-        elif kind == _SOURCE_OFFSET:
+            stream = data.decode("cp1252")
+        elif kind == _SOURCE_OFFSET and not dropped:
             (offset,) = struct.unpack("<I", data)
-            source = decompress(read("VBA", stream)[offset:]).decode("cp1252")
-            sources[stream] = edit.get(stream, str)(source)
+            sources[stream] = decompress(read(f"VBA/{stream}")[offset:]).decode("cp1252")
             data = b"\0" * 4  # the source now begins the stream
         elif kind == _END:
-            out += [_new_module(module) for module in add]
-        out.append(_record(kind, data, size if kind == _VERSION else None))
-    return b"".join(out), sources
+            out += [_new_module(module) for module in modules]
+        if not dropped:
+            out.append(_record(kind, data, size if kind == _VERSION else None))
+        dropped = dropped and kind != _MODULE_END
+    return b"".join(out), {**sources, **modules}
 
 
 def _records(data: bytes) -> list[tuple[int, int, bytes]]:

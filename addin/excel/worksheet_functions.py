@@ -3,6 +3,7 @@
 import xlwings
 
 import tausheet.functions  # noqa: F401 - fills the catalogue
-from tausheet.addin.excel.registration import register
+from tausheet.addin.excel.registration import end_when_stuck, register
 
 register(globals(), xlwings)
+end_when_stuck()
