@@ -15,9 +15,8 @@ from PIL import Image
 
 from tausheet import templates
 from tausheet.functions.catalogue import CATALOGUE
-from tausheet.templates import formulas, style
+from tausheet.templates import drawings, formulas, style
 from tausheet.templates.model import Choice, Input, Tolerance
-from tausheet.templates.sheets import drawings
 from tausheet.templates.values import FIELDS
 
 SHEET = templates.SHEETS["bleed"]
