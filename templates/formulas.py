@@ -16,7 +16,7 @@ from openpyxl.formula.tokenizer import Token
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import TausheetError
 from tausheet.functions.units import units_of
-from tausheet.templates.model import COUNT, Choice, Input, Sheet, Tolerance
+from tausheet.templates.model import COUNT, Choice, Formed, Input, Sheet, Tolerance
 
 BUILT_INS = frozenset(
     """
@@ -108,7 +108,25 @@ def dependencies(sheet: Sheet) -> dict[str, set[str]]:
     for table in sheet.tables:
         for column in table.columns:
             graph[f"{table.name}_{column.name}"] = set()
+    for formed in sheet.formed:
+        cells = cells_of(formed)
+        for heading in formed.columns:
+            used = set().union(*(names_in(text) for _, at, text in cells if at == heading))
+            graph[f"{formed.name}_{heading}"] = {
+                re.sub(r"^(here|above)_", f"{formed.name}_", name) for name in used
+            }
+        graph[formed.name] = {f"{formed.name}_{column}" for column in formed.columns}
     return graph
+
+
+def cells_of(formed: Formed) -> list[tuple[int, str, str]]:
+    """Every cell of a formed table that is not blank: row from 0, column, formula."""
+    return [
+        (row, column, text)
+        for row, line in enumerate(formed.rows)
+        for column, text in zip(formed.columns, line, strict=True)
+        if text
+    ]
 
 
 def reachable(start: Iterable[str], graph: Mapping[str, set[str]]) -> set[str]:
@@ -130,6 +148,8 @@ def computed_by_ours(sheet: Sheet) -> set[str]:
     for worst in sheet.worst_cases:
         if _ours(worst.formula):
             names |= {f"{worst.of}_min", f"{worst.of}_max"}
+    for formed in sheet.formed:
+        names |= {f"{formed.name}_{at}" for _, at, text in cells_of(formed) if _ours(text)}
     return names
 
 
@@ -149,7 +169,9 @@ def check(sheet: Sheet) -> None:
             raise SheetError(f"{sheet.name}: {where} uses {name}, which is not defined")
         for function in functions_in(formula) - BUILT_INS - CATALOGUE.keys():
             raise SheetError(f"{sheet.name}: {where} calls {function}, which is not allowed")
-    for name in graph:
+    # rows of a formed table build on the row above, so its columns may depend on each other
+    columns = {f"{formed.name}_{column}" for formed in sheet.formed for column in formed.columns}
+    for name in graph.keys() - columns:
         if name in reachable(graph[name], graph):
             raise SheetError(f"{sheet.name}: {name} depends on itself")
     ours = computed_by_ours(sheet)
@@ -204,6 +226,11 @@ def _formulas(sheet: Sheet) -> Iterable[tuple[str, str, set[str]]]:
         for part in worst.parts:
             if part.inside:
                 yield f"the worst case of {worst.of}", part.inside, set()
+    for formed in sheet.formed:
+        places = {f"here_{column}" for column in formed.columns}
+        for row, column, text in cells_of(formed):
+            above = {f"above_{column}" for column in formed.columns} if row else set()
+            yield f"row {row + 1} of {formed.name}, {column},", text, places | above
     for one in sheet.checks:
         yield f"check {one.key}", one.value, set()
         yield f"check {one.key}", one.limit, set()

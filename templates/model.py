@@ -3,7 +3,8 @@
 Formulas are texts without the leading "=", written in symbols: "R_unit*C_unit". Besides the
 symbols of the inputs and quantities they may use, for every input with a tolerance, `SYMBOL_lo`
 and `SYMBOL_hi` (its extremes); for every worst case `SYMBOL_min` and `SYMBOL_max`; for every
-second way `SYMBOL_hand`; for every table `TABLE_COLUMN`. Everything is in base SI units.
+second way `SYMBOL_hand`; for every table `TABLE_COLUMN`, and `TABLE` itself where formulas fill it.
+Everything is in base SI units.
 """
 
 from __future__ import annotations
@@ -269,6 +270,20 @@ class Table:
 
 
 @dataclass(frozen=True)
+class Formed:
+    """A table that formulas fill: sources or stages for a function, or the rows of a calculation.
+
+    `rows` holds a formula a cell, "" for a blank. Formulas know the whole as `name` and a column
+    as `name_COLUMN`. Inside the table `here_COLUMN` is the cell of the same row and `above_COLUMN`
+    that of the row above.
+    """
+
+    name: str
+    columns: tuple[str, ...]
+    rows: tuple[tuple[str, ...], ...]
+
+
+@dataclass(frozen=True)
 class Picture:
     """The circuit: a picture beside the module, and the line on what is switched when."""
 
@@ -306,6 +321,7 @@ class Sheet:
     basis: Basis
     demo: Heading
     tables: tuple[Table, ...] = field(default=())
+    formed: tuple[Formed, ...] = field(default=())
 
     def entries(self) -> Iterator[Entry]:
         """Every input, in the order of the page."""

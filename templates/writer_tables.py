@@ -1,12 +1,17 @@
-"""The worksheet "Tables": units, how results are shown, and the constants a sheet looks up."""
+"""The worksheet "Tables": units, how results are shown, constants to look up, formed tables."""
 
 from __future__ import annotations
+
+import re
+from collections.abc import Mapping, Sequence
 
 from openpyxl.utils import get_column_letter
 
 from tausheet.functions.units import readable_unit, units_of
 from tausheet.templates import style
 from tausheet.templates.book import Book, measured, table_name
+from tausheet.templates.formulas import cells_of, renamed
+from tausheet.templates.model import Formed
 from tausheet.templates.values import shown_unit
 
 TOP = 4
@@ -28,6 +33,8 @@ def write(book: Book) -> None:
             for c in table.columns
         ]
         place = _columns(book, columns, place)
+    for formed in book.sheet.formed:
+        place = _formed(book, formed, place)
 
 
 def spellings(unit: str) -> list[str]:
@@ -93,22 +100,48 @@ def _shown(book: Book, quantity: str, place: int) -> int:
     )
 
 
+def _formed(book: Book, formed: Formed, place: int) -> int:
+    """A table that formulas fill; numbers and texts alone are written as such."""
+    letters = {column: get_column_letter(place + i) for i, column in enumerate(formed.columns)}
+    blank = tuple(None for _ in formed.rows)
+    end = _columns(
+        book, [(f"{formed.name}_{at}", f"{formed.name}: {at}", blank) for at in letters], place
+    )
+    for row, column, text in cells_of(formed):
+        beside = {f"here_{at}": f"{letter}{TOP + row}" for at, letter in letters.items()}
+        above = {f"above_{at}": f"{letter}{TOP + row - 1}" for at, letter in letters.items()}
+        book.tables[f"{letters[column]}{TOP + row}"] = _written(text, {**beside, **above})
+    first, last = letters[formed.columns[0]], letters[formed.columns[-1]]
+    book.define(formed.name, book.tables, f"{first}{TOP}", f"{last}{TOP + len(formed.rows) - 1}")
+    return end
+
+
+def _written(formula: str, cells: Mapping[str, str]) -> float | str:
+    """What stands in a cell: a number or a text alone as it is, anything else as a formula."""
+    if word := re.fullmatch(r'"([^"=]+)"', formula):
+        return word[1]
+    try:
+        return float(formula)
+    except ValueError:
+        return "=" + renamed(formula, cells)
+
+
 def _columns(
-    book: Book, columns: list[tuple[str, str, tuple[float | str, ...]]], place: int
+    book: Book, columns: Sequence[tuple[str, str, Sequence[float | str | None]]], place: int
 ) -> int:
     """Write columns side by side from a place on; the place of the next table."""
     sheet = book.tables
     for name, heading, values in columns:
         letter = get_column_letter(place)
-        sheet.column_dimensions[letter].width = 4 + max(
-            len(heading), *(len(str(value)) for value in values)
-        )
+        longest = max(len(str(text)) for text in (heading, *values))
+        sheet.column_dimensions[letter].width = 4 + longest
         cell = sheet[f"{letter}{TOP - 1}"]
         cell.value = heading
         cell.font = style.font(10, bold=True)
         cell.border = style.RULE
         for row, value in enumerate(values, start=TOP):
-            sheet[f"{letter}{row}"] = value
+            if value is not None:
+                sheet[f"{letter}{row}"] = value
         book.define(name, sheet, f"{letter}{TOP}", f"{letter}{TOP + len(values) - 1}")
         place += 1
     return place + 1

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
@@ -20,6 +21,7 @@ from tausheet.templates.model import (
     Choice,
     Curve,
     Demo,
+    Formed,
     Group,
     Heading,
     Input,
@@ -153,6 +155,44 @@ def with_quantity(quantity: Quantity) -> Sheet:
     return changed(blocks=(replace(first, quantities=(*first.quantities, quantity)),))
 
 
+HALVING = Formed(
+    "halve",
+    ("from", "to", "middle", "over"),
+    (
+        ("0", "V_a", "(here_from+here_to)/2", "here_middle^2>V_a"),
+        *(
+            (
+                "IF(above_over,above_from,above_middle)",
+                "IF(above_over,above_middle,above_to)",
+                "(here_from+here_to)/2",
+                "here_middle^2>V_a",
+            ),
+        )
+        * 60,
+    ),
+)
+RAMP = Formed("supply", ("shape", "a", "b", "c"), (('"ramp"', "V_a", "3", ""),))
+
+
+def with_quantity_and(formed: Formed, quantity: Quantity) -> Sheet:
+    return replace(with_quantity(quantity), formed=(formed,))
+
+
+def test_formed_table_of_rows_that_build_on_the_row_above(tmp_path: Path) -> None:
+    """Halving 60 times from 0 to 2 finds the square root of 2 (elementary arithmetic)."""
+    root = Quantity("q_root", "a root", "INDEX(halve_middle,ROWS(halve_middle))", "ratio", "")
+    read = computed(tmp_path, with_quantity_and(HALVING, root))
+    assert read("q_root") == pytest.approx(2**0.5, rel=1e-15)
+
+
+def test_formed_table_as_a_source_table(tmp_path: Path) -> None:
+    """A ramp of 2 V in 3 s into tau = 1 s: y = 2/3 (t - 1 + exp(-t)) V, from the textbooks."""
+    formula = "FO_CROSSING(1,1,0,supply)"
+    found = Quantity("t_found", "crossing", formula, "time", "")
+    t = computed(tmp_path, with_quantity_and(RAMP, found))("t_found")
+    assert 2 / 3 * (t - 1 + math.exp(-t)) == pytest.approx(1, rel=1e-14)
+
+
 def with_input(entry: Input | Choice) -> Sheet:
     return changed(groups=(Group("Inputs", (*SMALL.groups[0].entries, entry)),))
 
@@ -172,6 +212,27 @@ SLIPS = [
     ),
     (
         with_quantity(Quantity("q_one", "x", "1", "time", "", "FO_TAU_RC(1,1)")),
+        "the second way of q_one depends on a function of ours",
+    ),
+    (
+        with_quantity_and(RAMP, Quantity("q_one", "x", "supply_d", "time", "")),
+        "q_one uses supply_d, which is not",
+    ),
+    (
+        changed(formed=(Formed("one", ("a",), (("above_a",),)),)),
+        "row 1 of one, a, uses above_a, which is not",
+    ),
+    (
+        with_quantity_and(
+            Formed("one", ("a",), (("q_one",),)), Quantity("q_one", "x", "one_a", "time", "")
+        ),
+        "q_one depends on itself",
+    ),
+    (
+        with_quantity_and(
+            Formed("one", ("a", "b"), (("t_one", "here_a"),)),
+            Quantity("q_one", "x", "1", "time", "", "one_b"),
+        ),
         "the second way of q_one depends on a function of ours",
     ),
     (with_input(volts("V_b", units=("A",))), "V_b offers a unit that does not fit"),
