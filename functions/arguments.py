@@ -134,6 +134,15 @@ def single(raw: object) -> object:
     return cells.ravel().tolist()[0]
 
 
+_NO_ARTICLE = {"a", "digits", "how", "its", "ohm", "one", "the", "true", "what", "which"}
+
+
+def asked(parameter: Parameter) -> str:
+    """What to enter, to follow the word enter: "the time constant (s)", "which passages count"."""
+    bare = parameter.meaning.split(" ", 1)[0].lower() in _NO_ARTICLE
+    return parameter.meaning if bare else f"the {parameter.meaning}"
+
+
 class Spec:
     """Base of the argument specifications."""
 
@@ -155,7 +164,7 @@ class Spec:
         """The error that names the argument, the value, what is allowed and what to do."""
         found = "blank" if is_blank(raw) else shown(raw)
         allowed = f"; allowed: {self.text}" if self.text else ""
-        return kind(f"{parameter.name} is {found}{allowed}; enter the {parameter.meaning}")
+        return kind(f"{parameter.name} is {found}{allowed}; enter {asked(parameter)}")
 
     def pass_on(self, raw: object, parameter: Parameter) -> None:
         """Raise an error value that stands in an argument, unchanged."""
@@ -229,7 +238,7 @@ class Number(Spec):
             raise DomainError(
                 f"{parameter.name} is 0, which here cannot be told from an empty cell; "
                 f"leave the argument out for {parameter.default:g}, "
-                f"or enter the {parameter.meaning}"
+                f"or enter {asked(parameter)}"
             )
         return value
 

@@ -37,7 +37,14 @@ from tausheet.functions.arguments import (
     is_range,
     shown,
 )
-from tausheet.functions.errors import CellError, DomainError, InputError, error_codes, nan_of
+from tausheet.functions.errors import (
+    CellError,
+    DomainError,
+    ErrorKind,
+    InputError,
+    error_codes,
+    nan_of,
+)
 
 P = ParamSpec("P")
 R = TypeVar("R")
@@ -284,23 +291,27 @@ class _Result:
                     )
                 }
                 return kind(f"{name}: {message.format(**named)}")
-        if isinstance(self.answer.values, (str, tuple)):
-            return None
-        values = np.asarray(self.answer.values)
-        if values.dtype != object and not self.entry.matrix:
-            value = np.broadcast_to(values, self.shape)[index]
-            if not np.isfinite(value):
-                return DomainError(f"{name}: {_TOO_LARGE}; check the arguments for a slip")
+        if self._beyond_numbers()[index]:
+            return DomainError(f"{name}: {_TOO_LARGE}; check the arguments for a slip")
         return None
+
+    def _beyond_numbers(self) -> NDArray[np.bool_]:
+        """Where a result, or one of several that belong together, is no finite number."""
+        beyond = np.zeros(self.shape, bool)
+        if self.answer is None or isinstance(self.answer.values, str):
+            return beyond
+        several = isinstance(self.answer.values, tuple)
+        for values in map(np.asarray, self.answer.values if several else (self.answer.values,)):
+            if values.dtype.kind == "f":
+                # a result that does not exist is marked as #N/A by the kernel itself
+                wrong = ~np.isfinite(values) & (error_codes(values) != ErrorKind.NA.value)
+                beyond |= wrong.any() if self.entry.matrix and not several else wrong
+        return beyond
 
     def sentence(self) -> str:
         """The first error in reading order, in words; empty when there is none."""
         codes = self._all_codes()
-        bad = np.zeros(self.shape, bool) if codes is None else codes != 0
-        if self.answer is not None and not self.entry.matrix:
-            values = np.asarray(self.answer.values)
-            if values.dtype.kind == "f" and not isinstance(self.answer.values, tuple):
-                bad |= ~np.isfinite(values)
+        bad = self._beyond_numbers() if codes is None else (codes != 0) | self._beyond_numbers()
         if not bad.any():
             return ""
         first = tuple(int(i) for i in np.unravel_index(bad.argmax(), self.shape))

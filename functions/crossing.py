@@ -151,7 +151,7 @@ def crossing(
         sources: table with the columns Shape, A, B, C, D, E; a source table: Shape, A to E
         direction: which passages count; "either", "rising", "falling"
         count: which of them is asked for, 1 when left out; whole number >= 1
-        after: only later ones count (s), 0 when left out; any number
+        after: time after which they count (s), 0 when left out; any number
 
     Result: time (s), in the broadcast shape of level, tau, initial, count and after.
 

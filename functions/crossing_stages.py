@@ -83,7 +83,7 @@ def stages_crossing(
             stage table: Starts at, Time constant, Heads for, Jump to, Stops at
         direction: which passages count; "either", "rising", "falling"
         count: which of them is asked for, 1 when left out; whole number >= 1
-        after: only later ones count (s), 0 when left out; any number
+        after: time after which they count (s), 0 when left out; any number
 
     Result: time (s), in the broadcast shape of level, initial, count and after.
 

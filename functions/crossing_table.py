@@ -217,7 +217,7 @@ def table_crossing(
         held: TRUE to hold each level until the next point, FALSE when left out; TRUE or FALSE
         direction: which passages count; "either", "rising", "falling"
         count: which of them is asked for, 1 when left out; whole number >= 1
-        after: only later ones count (s), 0 when left out; any number
+        after: time after which they count (s), 0 when left out; any number
 
     Result: time (s), in the broadcast shape of level, tau, initial, count and after.
 

@@ -114,7 +114,7 @@ def network_crossing(
             "voltage at NODE", "voltage across NAME", "current through NAME" or "power in NAME"
         direction: which passages count; "either", "rising", "falling"
         count: which of them is asked for, 1 when left out; whole number >= 1
-        after: only later ones count (s), 0 when left out; any number
+        after: time after which they count (s), 0 when left out; any number
 
     Result: time (s), in the broadcast shape of level, count and after.
 

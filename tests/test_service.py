@@ -52,6 +52,20 @@ def test_the_reason_names_argument_value_and_remedy(
     assert sentence in reason("FO_STEP", *arguments)
 
 
+def test_the_remedy_is_a_sentence_whatever_the_help_begins_with() -> None:
+    said = reason("FO_CROSSING", 2.5, 1.0, 0.0, [["step", 5.0]], "up")
+    assert said.endswith('allowed: "either", "rising", "falling"; enter which passages count')
+    assert reason("FO_SI", 4.7, None).endswith("enter its unit, for example uF")
+
+
+def test_several_results_beyond_the_range_of_numbers_have_a_reason() -> None:
+    """From -1E308 to 1E308 the ripple itself is 2E308, which no cell holds."""
+    settled = ("FO_RIPPLE", 1.0, -1e308, 1e308, 1.0, 0.5)
+    assert "beyond the range of numbers" in reason(*settled)
+    assert "beyond the range of numbers" in reason(*settled, "pp")
+    assert reason("FO_RIPPLE", 1.0, -1e307, 1e307, 1.0, 0.5) == ""
+
+
 def test_too_many_arguments_have_a_reason() -> None:
     assert "takes 5 arguments, but got 6" in reason("FO_STEP", 1, 1, 0, 5, 0, 7)
 
