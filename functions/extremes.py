@@ -81,7 +81,8 @@ def peak_of(
         last = follow(path, 0.0, last)
         if path.moment(path.length) >= t_from:
             _along(last, t_from, t_to, best)
-    return Peak(best.value(), best.time)
+    # a moment told back from its path may be rounded past the end of the window
+    return Peak(best.value(), min(max(best.time, t_from), t_to))
 
 
 def _through(paths: Iterable[Path | Repeating], t_from: float, t_to: float) -> Iterator[Path]:

@@ -355,6 +355,15 @@ def test_peak_against_a_fine_grid(kind):
         assert superpose(time, 1.0, 0.3, rows) == pytest.approx(value, abs=1e-13)
 
 
+def test_peak_lies_in_its_window():
+    rng = np.random.default_rng(3)
+    for _ in range(300):
+        begin, end = sorted(rng.uniform(0.1, 5.0, 2).tolist())
+        at, length, late = rng.uniform([0.0, 1.0, 0.0], [begin, 3.0, 2.0]).tolist()
+        rising = [["step", 5.0, at, None], ["ramp", 3.0, length, late]]
+        assert begin <= peak(1.0, 0.0, rising, begin, end).time <= end
+
+
 def test_peak_of_a_fast_sine_on_a_slope_over_ten_thousand_periods():
     rows = [["slope", 1.0, None, None], ["sine", 1.0, 1000.0, None]]
     value, time = peak(0.5, 0.0, rows, 0.0, 10.0)
