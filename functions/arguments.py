@@ -407,7 +407,7 @@ class Column(Spec):
     def element(self, raw: object, parameter: Parameter) -> NDArray[np.float64]:
         """The numbers, one-dimensional."""
         try:
-            cells = grid(raw).ravel() if is_range(raw) else grid([raw])
+            cells = grid(raw, copy=False).ravel() if is_range(raw) else grid([raw])
         except InputError as error:
             raise InputError(f"{parameter.name}: {error}") from None
         each = Parameter(parameter.name, self.number, REQUIRED, parameter.help)

@@ -14,7 +14,7 @@ from tausheet.functions.from_rest import excess, fall_and_lag
 
 Points = Annotated[Any, Column()]
 
-_BLOCK = 8192
+_BLOCK = 16384
 _LONGEST = 500.0
 """Time constants that a block may span, so that exp of them stays a number."""
 
@@ -25,9 +25,9 @@ def check_points(times: Array, levels: Array) -> None:
         raise InputError(
             f"times has {times.size} values and levels has {levels.size}; enter one of each a point"
         )
-    steps = np.diff(times)
-    if steps.size and steps.min() < 0:
-        at = int(np.argmax(steps < 0))
+    falls = times[1:] < times[:-1]
+    if falls.any():
+        at = int(np.argmax(falls))
         raise DomainError(
             f"times falls from {times[at]:.15g} to {times[at + 1]:.15g} at point {at + 2}; "
             "put the points in order"
@@ -74,26 +74,43 @@ class Nodes:
         computed from the times themselves, so that nothing builds up over a million points.
         """
         t = self.t[start : end + 1]
-        d = np.diff(t) / tau
+        d = np.diff(t)
+        d /= tau
         level = self.after[start:end]
-        rise = self.before_next[start:end] - level
         p, q = _segment(d)
-        added = level * p + rise * q
+        added = p
+        added *= level
+        rise = np.subtract(self.before_next[start:end], level, out=d)
+        rise *= q
+        added += rise
+        fall = np.subtract(t[0], t[1:], out=q)
+        fall /= tau
+        np.exp(fall, out=fall)
         if end == start + 1:
-            alone: Array = y * np.exp(-d) + added
-            return alone
-        fall = np.exp((t[0] - t[1:]) / tau)
-        result: Array = fall * (y + np.cumsum(added / fall))
+            return y * fall + added
+        added /= fall
+        result: Array = np.cumsum(added, out=added)
+        result += y
+        result *= fall
         return result
 
 
+_SERIES = (-1 / 5040, 1 / 720, -1 / 120, 1 / 24, -1 / 6, 1 / 2)
+
+
 def _segment(d: Array) -> tuple[Array, Array]:
-    """1 - exp(-d), and the share of a rise over d: 1 - (1 - exp(-d)) / d."""
+    """1 - exp(-d), and the share of a rise over d: 1 - (1 - exp(-d)) / d.
+
+    Both in arrays of their own, worked out in place: a new array a step takes twice as long.
+    """
     largest = d.max(initial=0.0)
     if largest < 0.01:
-        tail = 1 / 2 - d * (1 / 6 - d * (1 / 24 - d * (1 / 120 - d * (1 / 720 - d / 5040))))
-        q = d * tail
-        return d - d * q, q
+        q = d * _SERIES[0]
+        for coefficient in _SERIES[1:]:
+            q += coefficient
+            q *= d
+        p = d * q
+        return np.subtract(d, p, out=p), q
     p = -np.expm1(-d)
     q = np.where(d > 0, excess(d) / np.where(d > 0, d, 1.0), 0.0)
     return p, q
@@ -168,7 +185,8 @@ def table(
     check_points(times, levels)
     nodes = Nodes(times, levels, held)
     shape = np.broadcast_shapes(np.shape(t), np.shape(tau), np.shape(initial))
-    late = np.maximum(t, 0.0)
+    early = np.any(t < 0)
+    late = np.maximum(t, 0.0) if early else t
     if np.ndim(tau) == np.ndim(initial) == 0:
         result = _response(nodes, late, float(tau), float(initial))
     else:
@@ -180,7 +198,7 @@ def table(
         for number, (one_tau, one_initial) in enumerate(different.tolist()):
             mask = which == number
             result[mask] = _response(nodes, whole[mask], one_tau, one_initial)
-    return np.where(t < 0, initial, result)
+    return np.where(t < 0, initial, result) if early else result
 
 
 def _response(nodes: Nodes, t: Array, tau: float, initial: float) -> Array:
