@@ -87,7 +87,8 @@ class Nodes:
         fall /= tau
         np.exp(fall, out=fall)
         if end == start + 1:
-            return y * fall + added
+            alone: Array = y * fall + added
+            return alone
         added /= fall
         result: Array = np.cumsum(added, out=added)
         result += y
