@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import csv
 import sys
+from collections.abc import Iterable
 from enum import Enum
 from pathlib import Path
 from typing import TYPE_CHECKING, Annotated
@@ -192,12 +193,12 @@ def demo(
     """The main job on the demo scenario: sheets made, computed, results printed."""
     from tausheet.addin.make import make_demo
 
+    sheets = make_demo(folder, force=force)
     console.print("Quay 4, harbour crane, drive retrofit: the calc sheets of the demo job\n")
-    made = make_demo(folder, force=force)
-    _print_made(made)
+    _print_made(sheets)
 
 
-def _print_made(made: list[Made]) -> None:
+def _print_made(made: Iterable[Made]) -> None:
     for sheet in made:
         console.print(f"{sheet.title}: {sheet.path}", style="bold")
         table = Table(box=None, pad_edge=False)

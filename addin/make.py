@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import tempfile
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -91,8 +91,11 @@ def _shown(value: CellValue) -> str:
     return "" if value is None else str(value)
 
 
-def make_demo(folder: Path, *, force: bool = False) -> list[Made]:
-    """The calc sheets of the demo job, one a file."""
+def make_demo(folder: Path, *, force: bool = False) -> Iterator[Made]:
+    """The calc sheets of the demo job, one a file, each made as it is asked for.
+
+    What would be overwritten is refused at once, before the first.
+    """
     outs = {name: folder / f"quay-4-{name}.xlsx" for name in templates.SHEETS}
     for out in outs.values():
         files.refuse_existing(out, force=force)
@@ -100,7 +103,7 @@ def make_demo(folder: Path, *, force: bool = False) -> list[Made]:
         folder.mkdir(parents=True, exist_ok=True)
     except OSError as error:
         raise NotMade(f"the folder {folder} cannot be made: {error.strerror}") from None
-    return [make_sheet(name, out, {}, demo=True, force=force) for name, out in outs.items()]
+    return (make_sheet(name, out, {}, demo=True, force=force) for name, out in outs.items())
 
 
 def print_sheets(paths: Sequence[Path], *, force: bool = False) -> list[Path]:
