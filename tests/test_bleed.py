@@ -7,75 +7,24 @@ import random
 import re
 import zipfile
 from collections.abc import Iterator
-from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
 import mpmath
 import pytest
-from openpyxl import load_workbook
+from filled import Filled, assert_refused, bad_values, differences, short
 
 from tausheet import templates
 from tausheet.addin import calc, embedded
 from tausheet.functions.errors import ErrorKind
 from tausheet.templates import limits, writer
-from tausheet.templates.model import COUNT, Choice, Entry, Input, Tolerance
+from tausheet.templates.model import Input
 
 SHEET = templates.SHEETS["bleed"]
 ENTRIES = {entry.symbol: entry for entry in SHEET.entries()}
 
 
-class Filled:
-    """A sheet in an engine: cells set and read by their defined names."""
-
-    def __init__(self, path: Path, book: Any) -> None:
-        workbook = load_workbook(path)
-        self.places: dict[str, tuple[str, str]] = {}
-        for name, defined in workbook.defined_names.items():
-            title, cells = next(iter(defined.destinations))
-            self.places[name] = (title, cells.replace("$", "").split(":")[0])
-        self.book = book
-        self.changed: dict[str, Any] = {}
-        self.typed = {
-            name: workbook[place[0]][place[1]].value
-            for name, place in self.places.items()
-            if re.match(r"(value|unit|lowest|highest|source)_of_", name)
-        }
-        self.values: dict[str, dict[str, Any]] = {}
-
-    def put(self, **cells: Any) -> Filled:
-        """Compute with these cells changed and every other as the demo has it."""
-        for name in self.changed.keys() - cells.keys():
-            self._set(name, self.typed[name])
-        for name, value in cells.items():
-            self._set(name, value)
-        self.changed = dict(cells)
-        self.values = self.book.values()
-        return self
-
-    def _set(self, name: str, value: Any) -> None:
-        title, cell = self.places[name]
-        if isinstance(self.book, embedded.Book):
-            self.book.set(title, cell, value)
-        else:
-            self.book.set({title: {cell: value}})
-
-    def __getitem__(self, name: str) -> Any:
-        title, cell = self.places[name]
-        return self.values[title][cell]
-
-    def checks(self) -> dict[str, Any]:
-        return {check: self[f"check_{check}"] for check in CHECKS}
-
-    def warnings(self) -> set[str]:
-        return {n.removeprefix("warning_") for n in WARNINGS if self[n] == "WARNING"}
-
-
 CHECKS = (*(check.key for check in SHEET.checks), "agreement")
-WARNINGS = tuple(
-    "warning_" + "_".join(re.findall("[a-z]+", name.lower()))
-    for name in (*(hazard.name for hazard in SHEET.hazards), "Source missing")
-)
 
 
 @pytest.fixture(scope="module")
@@ -88,21 +37,19 @@ def full_path(tmp_path_factory: pytest.TempPathFactory) -> Path:
 @pytest.fixture(scope="module")
 def short_path(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """The demo with fewer draws and points of the curve, to be computed some hundred times."""
-    worst = (replace(SHEET.worst_cases[0], draws=20),)
-    short = replace(SHEET, worst_cases=worst, curve=replace(SHEET.curve, points=24))
     path = tmp_path_factory.mktemp("bleed") / "short.xlsx"
-    writer.build(short, demo=True).save(path)
+    writer.build(short(SHEET), demo=True).save(path)
     return path
 
 
 @pytest.fixture(scope="module")
 def full(full_path: Path) -> Filled:
-    return Filled(full_path, embedded.Book.load(full_path))
+    return Filled(SHEET, full_path)
 
 
 @pytest.fixture(scope="module")
 def demo(short_path: Path) -> Filled:
-    return Filled(short_path, embedded.Book.load(short_path))
+    return Filled(SHEET, short_path)
 
 
 @pytest.fixture(scope="module")
@@ -114,13 +61,13 @@ def office() -> Iterator[calc.Calc]:
 @pytest.fixture(scope="module")
 def full_in_calc(full_path: Path, office: calc.Calc) -> Iterator[Filled]:
     with office.open(full_path) as book:
-        yield Filled(full_path, book)
+        yield Filled(SHEET, full_path, book)
 
 
 @pytest.fixture(scope="module")
 def in_calc(short_path: Path, office: calc.Calc) -> Iterator[Filled]:
     with office.open(short_path) as book:
-        yield Filled(short_path, book)
+        yield Filled(SHEET, short_path, book)
 
 
 DEMO = {
@@ -293,60 +240,11 @@ def test_root_sum_square_and_draw(full: Filled) -> None:
     assert spread == pytest.approx(middle * math.hypot(*slopes), rel=0.15)
 
 
-def bad_values(entry: Entry) -> Iterator[tuple[str, dict[str, Any]]]:
-    """Everything that can be wrong with the cells of one input."""
-    value = f"value_of_{entry.symbol}"
-    yield "blank", {value: None}
-    yield "text", {value: "abc"}
-    yield "empty text", {value: " "}
-    yield "error", {value: ErrorKind.NA}
-    yield "other error", {value: ErrorKind.DIV0}
-    if isinstance(entry, Choice):
-        yield "number", {value: 1.0}
-        yield "other case", {value: entry.options[0].swapcase()}
-        return
-    yield "digits as text", {value: "4.7"}
-    yield "truth", {value: True}
-    if entry.low > 0:
-        yield "zero", {value: 0.0}
-    yield "negative", {value: -1e3}
-    yield "huge", {value: 1e300}
-    yield "negative huge", {value: -1e300}
-    if entry.quantity == COUNT:
-        yield "half", {value: 1.5}
-    if entry.units:
-        unit = f"unit_of_{entry.symbol}"
-        yield "blank unit", {unit: None}
-        yield "number as unit", {unit: 1.0}
-        yield "error as unit", {unit: ErrorKind.VALUE}
-        yield "unknown unit", {unit: "furlong"}
-        yield "wrong unit", {unit: "A" if entry.quantity == "capacitance" else "µF"}
-        yield "wrong case", {unit: entry.units[0].swapcase() + "x"}
-    if entry.tolerance is not Tolerance.NONE:
-        for end, outward in (("lowest", 1.0), ("highest", -1.0)):
-            cell = f"{end}_of_{entry.symbol}"
-            yield f"{end} blank", {cell: None}
-            yield f"{end} text", {cell: "5 %"}
-            yield f"{end} error", {cell: ErrorKind.NUM}
-            yield f"{end} on the wrong side", {cell: outward * 1e3}
-            yield f"{end} huge", {cell: outward * 1e300}
-
-
 BAD = [
     pytest.param(symbol, cells, id=f"{symbol} {kind}")
     for symbol, entry in ENTRIES.items()
     for kind, cells in bad_values(entry)
 ]
-
-
-def assert_refused(filled: Filled, symbol: str) -> None:
-    assert filled["verdict"] == "FAIL"
-    assert filled[f"remark_on_{symbol}"].startswith(f"{symbol}")
-    assert len(filled[f"remark_on_{symbol}"]) > len(symbol) + 15
-    assert filled["decided_by"] == f"An input is missing or at fault: {symbol}"
-    used = filled.places.get(f"{symbol}_lo"), filled.places[symbol]
-    for place in (place for place in used if place):
-        assert isinstance(filled.values[place[0]][place[1]], ErrorKind), place
 
 
 @pytest.mark.parametrize(("symbol", "cells"), BAD)
@@ -369,22 +267,6 @@ def test_whole_sheet_is_alike_in_calc(full_in_calc: Filled, full: Filled) -> Non
         assert differences(full.put(**cells), full_in_calc.put(**cells)) == []
 
 
-def differences(here: Filled, there: Filled) -> list[tuple[str, str, Any, Any]]:
-    """Cells in which two engines differ; numbers may by 1e-12 of their size, errors in kind."""
-    assert here.values.keys() == there.values.keys()
-    found = []
-    for title, values in here.values.items():
-        for cell, value in values.items():
-            other = there.values[title][cell]
-            if isinstance(value, float) and isinstance(other, float):
-                same = math.isclose(value, other, rel_tol=1e-12)
-            else:
-                same = value == other or {type(value), type(other)} == {ErrorKind}
-            if not same:
-                found.append((title, cell, value, other))
-    return found
-
-
 @pytest.mark.parametrize("engine", ["embedded", "calc"])
 def test_number_beyond_the_range_of_numbers_in_the_file(
     short_path: Path, tmp_path: Path, office: calc.Calc, engine: str
@@ -398,7 +280,7 @@ def test_number_beyond_the_range_of_numbers_in_the_file(
                 data, times = re.subn(rb"<v>4\.7</v>", b"<v>1E400</v>", data)
                 assert times == 1
             new.writestr(item, data)
-    filled = Filled(short_path, None)
+    filled = Filled(SHEET, short_path)
     filled.values = embedded.compute(path) if engine == "embedded" else office.compute(path)
     assert filled["verdict"] == "FAIL"
     assert filled["remark_on_C_unit"].startswith("C_unit ")
@@ -581,7 +463,7 @@ def test_taps_need_a_multiple_of_the_levels(demo: Filled) -> None:
 def test_blank_sheet_fails_and_asks_for_everything(tmp_path: Path) -> None:
     path = tmp_path / "blank.xlsx"
     templates.build("bleed").save(path)
-    blank = Filled(path, embedded.Book.load(path)).put()
+    blank = Filled(SHEET, path).put()
     assert blank["verdict"] == "FAIL"
     for symbol, entry in ENTRIES.items():
         waits = "cannot be judged" if entry.needed else "is missing"

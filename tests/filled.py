@@ -1,0 +1,160 @@
+"""A calc sheet in an engine, for tests: cells set and read by their defined names."""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Iterator
+from dataclasses import replace
+from pathlib import Path
+from typing import Any
+
+from openpyxl import load_workbook
+
+from tausheet.addin import embedded
+from tausheet.functions.errors import ErrorKind
+from tausheet.templates import writer
+from tausheet.templates.model import COUNT, Choice, Entry, Sheet, Tolerance
+
+TYPED = re.compile(r"(value|unit|lowest|highest|source)_of_")
+
+
+class Filled:
+    """A sheet in an engine, as its file has it but for the cells that `put` changes.
+
+    filled.put(value_of_C_unit=3300, unit_of_C_unit="µF")["t_safe"] is a result in base SI.
+    """
+
+    def __init__(self, sheet: Sheet, path: Path, book: Any = None) -> None:
+        workbook = load_workbook(path)
+        self.sheet = sheet
+        self.places: dict[str, tuple[str, str]] = {}
+        for name, defined in workbook.defined_names.items():
+            title, cells = next(iter(defined.destinations))
+            self.places[name] = (title, cells.replace("$", "").split(":")[0])
+        self.book = book if book is not None else embedded.Book.load(path)
+        self.changed: dict[str, Any] = {}
+        self.typed = {
+            name: workbook[place[0]][place[1]].value
+            for name, place in self.places.items()
+            if TYPED.match(name)
+        }
+        self.values: dict[str, dict[str, Any]] = {}
+
+    @classmethod
+    def demo(cls, sheet: Sheet, folder: Path) -> Filled:
+        """The demo in the embedded engine, with few draws and points: for hundreds of sets."""
+        path = folder / f"{sheet.name}.xlsx"
+        writer.build(short(sheet), demo=True).save(path)
+        return cls(sheet, path)
+
+    def put(self, **cells: Any) -> Filled:
+        """Compute with these cells changed and every other as the file has it."""
+        changed = {name: self.typed[name] for name in self.changed.keys() - cells.keys()} | cells
+        if isinstance(self.book, embedded.Book):
+            for name, value in changed.items():
+                self.book.set(*self.places[name], value)
+        else:
+            by_title: dict[str, dict[str, Any]] = {}
+            for name, value in changed.items():
+                title, cell = self.places[name]
+                by_title.setdefault(title, {})[cell] = value
+            self.book.set(by_title)
+        self.changed = dict(cells)
+        self.values = self.book.values()
+        return self
+
+    def __getitem__(self, name: str) -> Any:
+        title, cell = self.places[name]
+        return self.values[title][cell]
+
+    def keys(self) -> tuple[str, ...]:
+        """The keys of the checks, that of the two ways among them."""
+        return (*(check.key for check in self.sheet.checks), "agreement")
+
+    def checks(self) -> dict[str, Any]:
+        """What each check says."""
+        return {key: self[f"check_{key}"] for key in self.keys()}
+
+    def warnings(self) -> set[str]:
+        """The names of the warnings that apply: "hot_surface"."""
+        return {
+            name.removeprefix("warning_")
+            for name in self.places
+            if name.startswith("warning_") and self[name] == "WARNING"
+        } - {"results"}
+
+
+def short(sheet: Sheet) -> Sheet:
+    """The sheet with fewer draws and points of the curve, to be computed some hundred times."""
+    return replace(
+        sheet,
+        worst_cases=tuple(replace(worst, draws=20) for worst in sheet.worst_cases),
+        curve=replace(sheet.curve, points=24),
+    )
+
+
+def bad_values(entry: Entry) -> Iterator[tuple[str, dict[str, Any]]]:
+    """Everything that can be wrong with the cells of one input."""
+    value = f"value_of_{entry.symbol}"
+    yield "blank", {value: None}
+    yield "text", {value: "abc"}
+    yield "empty text", {value: " "}
+    yield "error", {value: ErrorKind.NA}
+    yield "other error", {value: ErrorKind.DIV0}
+    if isinstance(entry, Choice):
+        yield "number", {value: 1.0}
+        yield "other case", {value: entry.options[0].swapcase()}
+        return
+    yield "digits as text", {value: "4.7"}
+    yield "truth", {value: True}
+    if entry.low > 0:
+        yield "zero", {value: 0.0}
+    yield "negative", {value: -1e3}
+    yield "huge", {value: 1e300}
+    yield "negative huge", {value: -1e300}
+    if entry.quantity == COUNT:
+        yield "half", {value: 1.5}
+    if entry.units:
+        unit = f"unit_of_{entry.symbol}"
+        yield "blank unit", {unit: None}
+        yield "number as unit", {unit: 1.0}
+        yield "error as unit", {unit: ErrorKind.VALUE}
+        yield "unknown unit", {unit: "furlong"}
+        yield "wrong unit", {unit: "A" if entry.quantity == "capacitance" else "µF"}
+        yield "wrong case", {unit: entry.units[0].swapcase() + "x"}
+    if entry.tolerance is not Tolerance.NONE:
+        for end, outward in (("lowest", 1.0), ("highest", -1.0)):
+            cell = f"{end}_of_{entry.symbol}"
+            yield f"{end} blank", {cell: None}
+            yield f"{end} text", {cell: "5 %"}
+            yield f"{end} error", {cell: ErrorKind.NUM}
+            yield f"{end} on the wrong side", {cell: outward * 1e3}
+            yield f"{end} huge", {cell: outward * 1e300}
+
+
+def assert_refused(filled: Filled, symbol: str) -> None:
+    """The sheet fails, says so beside this input, and computes with no value of it."""
+    assert filled["verdict"] == "FAIL"
+    assert filled[f"remark_on_{symbol}"].startswith(f"{symbol}")
+    assert len(filled[f"remark_on_{symbol}"]) > len(symbol) + 15
+    assert filled["decided_by"] == f"An input is missing or at fault: {symbol}"
+    used = filled.places.get(f"{symbol}_lo"), filled.places[symbol]
+    for place in (place for place in used if place):
+        assert isinstance(filled.values[place[0]][place[1]], ErrorKind), place
+
+
+def differences(here: Filled, there: Filled) -> list[tuple[str, str, Any, Any]]:
+    """Cells in which two engines differ; numbers may by 1e-12 of their size, errors in kind."""
+    assert here.values.keys() == there.values.keys()
+    found = []
+    for title, values in here.values.items():
+        for cell, value in values.items():
+            other = there.values[title][cell]
+            if isinstance(value, float) and isinstance(other, float):
+                same = math.isclose(value, other, rel_tol=1e-12)
+            else:
+                same = value == other or {type(value), type(other)} == {ErrorKind}
+            if not same:
+                found.append((title, cell, value, other))
+    return found
