@@ -13,6 +13,7 @@ the form in which LibreOffice takes it. A NaN without a known payload counts as 
 
 from __future__ import annotations
 
+import math
 import struct
 from enum import Enum
 from typing import Any
@@ -79,8 +80,7 @@ def error_codes(values: NDArray[np.float64]) -> NDArray[np.uint16]:
 
 def error_kind(value: float) -> ErrorKind | None:
     """Kind of the cell error that one number carries, None for a finite number."""
-    code = int(error_codes(np.asarray(value, dtype=np.float64)))
-    return ErrorKind(code) if code else None
+    return None if math.isfinite(value) else carried_kind(value) or ErrorKind.NUM
 
 
 def carried_kind(value: object) -> ErrorKind | None:

@@ -9,10 +9,11 @@ from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
-from openpyxl import load_workbook
+from openpyxl import Workbook, load_workbook
 
 from tausheet.addin import embedded
 from tausheet.functions.errors import ErrorKind
+from tausheet.functions.units import si
 from tausheet.templates import writer
 from tausheet.templates.model import COUNT, Choice, Entry, Sheet, Tolerance
 
@@ -25,14 +26,14 @@ class Filled:
     filled.put(value_of_C_unit=3300, unit_of_C_unit="µF")["t_safe"] is a result in base SI.
     """
 
-    def __init__(self, sheet: Sheet, path: Path, book: Any = None) -> None:
-        workbook = load_workbook(path)
+    def __init__(self, sheet: Sheet, made: Path | Workbook, book: Any = None) -> None:
+        workbook = load_workbook(made) if isinstance(made, Path) else made
         self.sheet = sheet
         self.places: dict[str, tuple[str, str]] = {}
         for name, defined in workbook.defined_names.items():
             title, cells = next(iter(defined.destinations))
             self.places[name] = (title, cells.replace("$", "").split(":")[0])
-        self.book = book if book is not None else embedded.Book.load(path)
+        self.book = book if book is not None else embedded.Book(workbook)
         self.changed: dict[str, Any] = {}
         self.typed = {
             name: workbook[place[0]][place[1]].value
@@ -84,6 +85,15 @@ class Filled:
             if name.startswith("warning_") and self[name] == "WARNING"
         } - {"results"}
 
+    def state(self, symbol: str) -> Any:
+        """The word beside an input: ok, not used, AT FAULT."""
+        title, cell = self.places[f"value_of_{symbol}"]
+        return self.values[title][f"H{cell[1:]}"]
+
+    def inputs_are_valid(self) -> bool:
+        """Whether every input can be used."""
+        return bool(self["inputs_valid"] == len(list(self.sheet.entries())))
+
 
 def short(sheet: Sheet) -> Sheet:
     """The sheet with fewer draws and points of the curve, to be computed some hundred times."""
@@ -100,6 +110,7 @@ def bad_values(entry: Entry) -> Iterator[tuple[str, dict[str, Any]]]:
     yield "blank", {value: None}
     yield "text", {value: "abc"}
     yield "empty text", {value: " "}
+    yield "not a number", {value: "NaN"}
     yield "error", {value: ErrorKind.NA}
     yield "other error", {value: ErrorKind.DIV0}
     if isinstance(entry, Choice):
@@ -110,7 +121,8 @@ def bad_values(entry: Entry) -> Iterator[tuple[str, dict[str, Any]]]:
     yield "truth", {value: True}
     if entry.low > 0:
         yield "zero", {value: 0.0}
-    yield "negative", {value: -1e3}
+    if (si(-1e3, entry.units[0]) if entry.units else -1e3) < entry.low:
+        yield "negative", {value: -1e3}
     yield "huge", {value: 1e300}
     yield "negative huge", {value: -1e300}
     if entry.quantity == COUNT:

@@ -6,6 +6,7 @@ import datetime
 import io
 import math
 from collections.abc import Iterable, Iterator
+from functools import cached_property
 from pathlib import Path
 from typing import Any
 
@@ -57,6 +58,7 @@ class Book:
         if sum(size(area) for f in self._formulas.values() for area in f.areas) > MOST_CELLS:
             raise Refused("the workbook", "its formulas refer to more cells than this engine reads")
         self._order = list(self._in_order())
+        self._stale: set[Key] = set(self._formulas)
 
     @classmethod
     def load(cls, path: Path) -> Book:
@@ -77,13 +79,18 @@ class Book:
         self._cells[key] = _constant(value, None)
         if value is None:
             del self._cells[key]
+        todo = [key]
+        while todo:
+            users = self._users.get(todo.pop(), set()) - self._stale
+            self._stale |= users
+            todo += users
 
     def values(self) -> Values:
-        """Compute everything; the value of every formula cell, by sheet and address."""
-        for key in (*self._formulas, *self._filled_by):
-            self._cells.pop(key, None)
+        """Compute what the cells entered change; the value of every formula cell."""
         for key in self._order:
-            self._compute(key)
+            if key in self._stale:
+                self._compute(key)
+        self._stale.clear()
         computed: Values = {sheet: {} for sheet in self._sheets}
         for sheet, row, column in (*self._formulas, *self._filled_by):
             address = f"{get_column_letter(column)}{row}"
@@ -131,6 +138,16 @@ class Book:
                     if other != key:
                         self._filled_by[other] = key
                         self._cells.pop(other, None)
+
+    @cached_property
+    def _users(self) -> dict[Key, set[Key]]:
+        """For every cell, the formula cells that refer to it; made when a cell first changes."""
+        users: dict[Key, set[Key]] = {}
+        for key, formula in self._formulas.items():
+            for area in formula.areas:
+                for other in _keys(area):
+                    users.setdefault(self._filled_by.get(other, other), set()).add(key)
+        return users
 
     def _compiled(self, key: Key) -> Formula:
         text, area = self._texts[key]
