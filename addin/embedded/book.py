@@ -25,6 +25,8 @@ from tausheet.functions.errors import ErrorKind
 Key = tuple[str, int, int]
 """Sheet, row, column."""
 
+Users = dict[Key, set[Key]]
+
 Values = dict[str, dict[str, CellValue]]
 
 
@@ -140,9 +142,9 @@ class Book:
                         self._cells.pop(other, None)
 
     @cached_property
-    def _users(self) -> dict[Key, set[Key]]:
+    def _users(self) -> Users:
         """For every cell, the formula cells that refer to it; made when a cell first changes."""
-        users: dict[Key, set[Key]] = {}
+        users: Users = {}
         for key, formula in self._formulas.items():
             for area in formula.areas:
                 for other in _keys(area):
