@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
@@ -326,3 +327,16 @@ def test_negative_results_show_their_sign(tmp_path: Path) -> None:
     values = embedded.Book(workbook).values()[title]
     assert (values[f"C{row}"], values[f"D{row}"]) == (-12.35, "V")
     assert style.RELATIVE.split(";")[1] == "[<0]-0.0%"
+
+
+def test_the_worked_example_of_the_guide_is_a_sheet(tmp_path: Path) -> None:
+    """360 s x 1.25 x ln(0.8 / 0.1) = 935.7 s, of 1200 s allowed (by hand)."""
+    guide = (Path(__file__).parent.parent / "DEVELOPERS.md").read_text(encoding="utf-8")
+    (code,) = re.findall(r"```python\n(.*?)```", guide, re.DOTALL)
+    room: dict[str, Any] = {}
+    exec(code, room)
+    read = computed(tmp_path, room["SHEET"])
+    assert read("t_ready_max") == pytest.approx(360 * 1.25 * math.log(8), rel=1e-14)
+    assert (read("verdict"), read("warning_warmed_up_in_part")) == ("PASS", "-")
+    late = computed(tmp_path, room["SHEET"], t_allowed="15 min")
+    assert (late("verdict"), late("warning_warmed_up_in_part")) == ("FAIL", "WARNING")
