@@ -2,23 +2,18 @@
 
 from __future__ import annotations
 
-import re
 from collections.abc import Iterator
 from functools import cache
 from pathlib import Path
 from typing import Any
 
-import pypdfium2
 import pytest
 from openpyxl import Workbook
-from PIL import ImageFont
+from printed import PAPERS, assert_no_text_is_cut, plain, printed, shown
 
 from tausheet import templates
 from tausheet.addin import calc, embedded
-from tausheet.templates import style
 
-A4 = (595, 842)
-LETTER = (612, 792)
 PAGES = 8
 
 FILLINGS: dict[str, tuple[dict[str, Any], bool]] = {
@@ -50,22 +45,7 @@ def filled(name: str) -> Workbook:
     return templates.build("bleed", given, demo=demo)
 
 
-def printed(office: calc.Calc, workbook: Workbook, folder: Path) -> tuple[list[Any], list[str]]:
-    """Sizes and texts of the pages that LibreOffice prints."""
-    path = folder / "sheet.xlsx"
-    workbook.save(path)
-    (out,) = office.pdf([path], folder)
-    pages = list(pypdfium2.PdfDocument(out))
-    sizes = [(round(page.get_width()), round(page.get_height())) for page in pages]
-    return sizes, [plain(page.get_textpage().get_text_range()) for page in pages]
-
-
-def plain(text: str) -> str:
-    """A text without the spaces and breaks that a page puts elsewhere."""
-    return re.sub(r"[\s\ufffe\u00ad]+", "", text)
-
-
-@pytest.mark.parametrize(("paper", "size"), [(9, A4), (1, LETTER)], ids=["A4", "Letter"])
+@pytest.mark.parametrize(("paper", "size"), PAPERS.values(), ids=PAPERS)
 def test_pages(office: calc.Calc, tmp_path: Path, paper: int, size: tuple[int, int]) -> None:
     workbook = templates.build("bleed", demo=True)
     sheet = workbook["Calc sheet"]
@@ -91,58 +71,16 @@ def test_every_text_is_on_the_page(office: calc.Calc, tmp_path: Path, name: str)
     assert len(sizes) <= PAGES + 1
     everything = "".join(texts)
     assert "###" not in everything
-    for cell, text in shown(name):
+    for cell, text in on_page(name):
         assert plain(text) in everything, (cell, text)
 
 
 @cache
-def shown(name: str) -> list[tuple[str, str]]:
-    """Every text of the page, computed ones included, by cell."""
+def on_page(name: str) -> list[tuple[str, str]]:
     workbook = filled(name)
-    values = embedded.Book(workbook).values()["Calc sheet"]
-    return [
-        (cell.coordinate, text)
-        for row in workbook["Calc sheet"].iter_rows()
-        for cell in row
-        if isinstance(text := values.get(cell.coordinate, cell.value), str) and text.strip()
-    ]
-
-
-@cache
-def letters(size: float, bold: bool) -> ImageFont.FreeTypeFont:
-    """The font that stands in for Arial, with the same widths."""
-    return ImageFont.truetype(f"LiberationSans-{'Bold' if bold else 'Regular'}.ttf", size * 20)
-
-
-def lines_of(text: str, room: float, size: float, bold: bool) -> int:
-    """Lines that a text takes at a width in pixels, measured with the real font."""
-    font = letters(size, bold)
-    lines, line = 1, ""
-    for word in text.split():
-        longer = f"{line} {word}".strip()
-        if font.getlength(longer) / 20 * 96 / 72 > room and line:
-            lines, line = lines + 1, word
-        else:
-            line = longer
-        if font.getlength(word) / 20 * 96 / 72 > room:
-            return 99
-    return lines
+    return shown(workbook, embedded.Book(workbook).values())
 
 
 @pytest.mark.parametrize("name", FILLINGS)
 def test_no_text_is_cut(name: str) -> None:
-    """Every text fits into its cell, measured with the font that prints it."""
-    sheet = filled(name)["Calc sheet"]
-    spans = {str(area).split(":")[0]: area for area in sheet.merged_cells.ranges}
-    for coordinate, text in shown(name):
-        cell = sheet[coordinate]
-        first, last = cell.column, cell.column
-        if coordinate in spans:
-            last = spans[coordinate].max_col
-        widths = list(style.COLUMNS.values())[first - 1 : last]
-        room = sum(widths) - 4 - 9 * (cell.alignment.indent or 0)
-        lines = lines_of(text, room, cell.font.sz, bool(cell.font.b))
-        if not cell.alignment.wrap_text:
-            assert lines == 1, (coordinate, text)
-        height = sheet.row_dimensions[cell.row].height
-        assert lines * cell.font.sz * 1.17 <= height + 0.5, (coordinate, text)
+    assert_no_text_is_cut(filled(name), on_page(name))
