@@ -15,7 +15,7 @@ from openpyxl.worksheet.worksheet import Worksheet
 from tausheet.functions.units import units_of
 from tausheet.templates import style
 from tausheet.templates.formulas import SheetError
-from tausheet.templates.model import COUNT, NUMBER, Entry, Quantity, Sheet
+from tausheet.templates.model import COUNT, NUMBER, UNITLESS, Entry, Quantity, Sheet
 from tausheet.templates.values import Typed
 
 MAIN = "Calc sheet"
@@ -101,7 +101,7 @@ def text_literal(text: str) -> str:
 
 def base_unit(quantity: str) -> str:
     """The base SI unit of a quantity, "" for a count."""
-    if quantity in (COUNT, NUMBER):
+    if quantity in UNITLESS:
         return ""
     return next(unit for unit, size in units_of(quantity).items() if size == 1)
 
@@ -115,7 +115,7 @@ def in_words(value: str, quantity: str, digits: str = "4") -> str:
     """A formula for a value with its unit, to be read; "no result" where there is none."""
     unit = base_unit(quantity)
     if quantity == NUMBER:
-        return f'IFERROR(FO_TEXT({value},"1",2),"no result")'
+        return f'IFERROR(FO_TEXT({value},"1",{digits}),"no result")'
     if not unit:
         return f'IFERROR({value}&"","no result")'
     number = f"100*({value})" if quantity == "ratio" else value
@@ -152,4 +152,4 @@ def measured(sheet: Sheet) -> list[str]:
     """The quantities with units that a sheet enters or shows, in order."""
     items: Iterable[Entry | Quantity] = (*sheet.entries(), *sheet.quantities())
     found = dict.fromkeys(getattr(item, "quantity", COUNT) for item in items)
-    return [quantity for quantity in found if quantity not in (COUNT, NUMBER)]
+    return [quantity for quantity in found if quantity not in UNITLESS]

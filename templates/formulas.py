@@ -16,7 +16,7 @@ from openpyxl.formula.tokenizer import Token
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import TausheetError
 from tausheet.functions.units import units_of
-from tausheet.templates.model import COUNT, Choice, Formed, Input, Sheet, Tolerance
+from tausheet.templates.model import UNITLESS, Choice, Formed, Input, Sheet, Tolerance
 
 BUILT_INS = frozenset(
     """
@@ -196,7 +196,7 @@ def _check_names(sheet: Sheet, graph: Mapping[str, set[str]]) -> None:
     if len({name.lower() for name in graph}) < len(graph):
         raise SheetError(f"{sheet.name}: two names differ only by case")
     for item in (*sheet.entries(), *sheet.quantities()):
-        if isinstance(item, Choice) or item.quantity == COUNT:
+        if isinstance(item, Choice) or item.quantity in UNITLESS:
             continue
         fitting = units_of(item.quantity)
         if isinstance(item, Input) and not set(item.units) <= fitting.keys():

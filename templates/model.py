@@ -20,6 +20,8 @@ COUNT = "count"
 NUMBER = "number"
 """The quantity of any other number without a unit."""
 
+UNITLESS = (COUNT, NUMBER)
+
 
 class Tolerance(Enum):
     """How the extremes of an input are given."""

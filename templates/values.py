@@ -12,7 +12,7 @@ from openpyxl.cell.cell import ILLEGAL_CHARACTERS_RE
 
 from tausheet.functions.errors import TausheetError
 from tausheet.functions.units import canonical, in_unit, si, units_of
-from tausheet.templates.model import COUNT, Choice, Demo, Entry, Input, Sheet, Tolerance
+from tausheet.templates.model import UNITLESS, Choice, Demo, Entry, Input, Sheet, Tolerance
 
 FIELDS = (
     "doc_number",
@@ -165,7 +165,7 @@ def _number(key: str, entry: Input, value: str | float) -> tuple[float, str]:
     if not unit:
         return number, ""
     known = canonical(unit)
-    if known is None or is_count(entry) or known not in units_of(entry.quantity):
+    if known is None or entry.quantity in UNITLESS or known not in units_of(entry.quantity):
         offered = f"use {', '.join(entry.units)}" if entry.units else "give the number alone"
         raise ValueRefused(
             f'{key} is "{value[:60]}", but "{unit[:20]}" is no unit of it; {offered}'
@@ -227,8 +227,3 @@ def _text(key: str, value: str | float) -> str:
     if ILLEGAL_CHARACTERS_RE.search(text):
         raise ValueRefused(f"{key} holds a character that no workbook can hold")
     return text
-
-
-def is_count(entry: Entry) -> bool:
-    """Whether an input counts things: a whole number without a unit."""
-    return isinstance(entry, Input) and entry.quantity == COUNT

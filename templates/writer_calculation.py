@@ -7,7 +7,7 @@ from openpyxl.styles import Font
 from tausheet.templates import style
 from tausheet.templates.book import Book, base_unit, table_name, text_literal
 from tausheet.templates.formulas import outer_call
-from tausheet.templates.model import COUNT, Quantity
+from tausheet.templates.model import COUNT, UNITLESS, Quantity
 from tausheet.templates.page import Page
 from tausheet.templates.values import shown_unit
 
@@ -76,8 +76,9 @@ def _shown(
 ) -> None:
     """A result in the unit in which it reads well."""
     cell = page.text(row, number, None, font, "right")
-    if quantity == COUNT:
-        cell.value = f'=IF(ISNUMBER({name}),{name},"no result")'
+    if quantity in UNITLESS:
+        value = name if quantity == COUNT else f"IF({name}=0,0,{_rounded(name)})"
+        cell.value = f'=IF(ISNUMBER({name}),{value},"no result")'
         page.text(row, unit, "-", style.font(9, colour=style.QUIET), indent=1)
         return
     place = place_of(name, quantity)
@@ -85,8 +86,7 @@ def _shown(
         f"INDEX({table_name(column, quantity)},{place})" for column in ("shown_under", "shown_over")
     )
     value = f"{name}*{under}/{over}"
-    rounded = f"ROUND({value},{style.DIGITS - 1}-INT(LOG10(ABS({value}))))"
-    cell.value = f'=IF(ISNUMBER({name}),IF({name}=0,0,{rounded}),"no result")'
+    cell.value = f'=IF(ISNUMBER({name}),IF({name}=0,0,{_rounded(value)}),"no result")'
     page.text(
         row,
         unit,
@@ -95,6 +95,10 @@ def _shown(
         style.font(9),
         indent=1,
     )
+
+
+def _rounded(value: str) -> str:
+    return f"ROUND({value},{style.DIGITS - 1}-INT(LOG10(ABS({value}))))"
 
 
 def place_of(name: str, quantity: str) -> str:

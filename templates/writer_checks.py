@@ -8,12 +8,11 @@ from tausheet.templates import style
 from tausheet.templates.book import (
     VERDICT_INKS,
     Book,
-    base_unit,
     in_words,
     text_literal,
     with_values,
 )
-from tausheet.templates.model import NUMBER, Check, Hazard, Sense
+from tausheet.templates.model import COUNT, NUMBER, Check, Hazard, Sense
 from tausheet.templates.page import Page
 
 VERDICT_PART = 1
@@ -214,7 +213,7 @@ def _check(page: Page, book: Book, check: Check) -> None:
 
 def _read(check: Check, value: str, other: str) -> str:
     """A value to be read, with all digits where fewer would make it look equal to the other."""
-    if not base_unit(check.quantity):
+    if check.quantity == COUNT:
         return in_words(value, check.quantity)
     few, few_other = (in_words(x, check.quantity) for x in (value, other))
     digits = f"IF(AND({value}<>{other},EXACT({few},{few_other})),15,4)"  # "=" misleads in Calc

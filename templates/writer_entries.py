@@ -13,7 +13,7 @@ from tausheet.functions.units import text as unit_text
 from tausheet.templates import style
 from tausheet.templates.book import Book, address, base_unit, table_name, text_literal
 from tausheet.templates.formulas import renamed
-from tausheet.templates.model import COUNT, Choice, Entry, Input, Tolerance
+from tausheet.templates.model import COUNT, UNITLESS, Choice, Entry, Input, Tolerance
 from tausheet.templates.values import shown_unit
 
 TOP = 4
@@ -243,8 +243,8 @@ def allowed_range(entry: Input) -> str:
 
 def plain_text(value: float, quantity: str) -> str:
     """A bound as the page writes it: 1 nF, 10 kV, 85 °C."""
-    if quantity == COUNT:
-        return f"{value:.0f}"
+    if quantity in UNITLESS:
+        return f"{value:.12g}"
     if quantity == "ratio":
         return f"{value * 100:.12g} %"
     digits = 1

@@ -15,6 +15,7 @@ from tausheet.functions.errors import TausheetError
 from tausheet.templates import formulas, style, writer, writer_checks, writer_tables
 from tausheet.templates.model import (
     COUNT,
+    NUMBER,
     Basis,
     Block,
     Caution,
@@ -327,6 +328,25 @@ def test_negative_results_show_their_sign(tmp_path: Path) -> None:
     values = embedded.Book(workbook).values()[title]
     assert (values[f"C{row}"], values[f"D{row}"]) == (-12.35, "V")
     assert style.RELATIVE.split(";")[1] == "[<0]-0.0%"
+
+
+def test_plain_numbers_are_typed_shown_and_checked(tmp_path: Path) -> None:
+    """A ratio such as X/R = 13.9 has no unit; one that fails never looks equal to its limit."""
+    ratio = Input("X_to_R", "X/R of the feeder", NUMBER, (), 0.1, 100.0, "a test",
+                  Demo("13.9", "a test"))  # fmt: skip
+    row = Quantity("n_half", "half of it", "X_to_R/2", NUMBER, "X/R / 2")
+    sheet = with_quantity(row)
+    sheet = replace(
+        sheet,
+        groups=(Group("Inputs", (*SMALL.groups[0].entries, ratio)),),
+        checks=(Check("half", "Half", "n_half", "6.95", NUMBER, "a test"),),
+    )
+    assert computed(tmp_path, sheet)("verdict") == "PASS"
+    read = computed(tmp_path, sheet, X_to_R="13.900002")
+    assert (read("n_half"), read("verdict")) == (13.900002 / 2, "FAIL")
+    assert read("decided_by").startswith("Half: 6.950001")
+    with pytest.raises(TausheetError, match='"kV" is no unit of it; give the number alone'):
+        computed(tmp_path, sheet, X_to_R="13.9 kV")
 
 
 def test_the_worked_example_of_the_guide_is_a_sheet(tmp_path: Path) -> None:
