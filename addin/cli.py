@@ -82,7 +82,12 @@ def new(
     out: Annotated[Path, typer.Argument(help="The workbook to make, an .xlsx.")],
     set_: Annotated[
         list[str] | None,
-        typer.Option("--set", help='An input: symbol=value, with its unit: C_bus="4.7 mF".'),
+        typer.Option(
+            "--set",
+            help='An input: symbol=value, with its unit: C_bus="4.7 mF". A cell of a table: '
+            'table.column.row=value, rows from 1: bounce.t_closed.1="2 ms". '
+            "Where either comes from: C_bus_source=..., bounce.source=...",
+        ),
     ] = None,
     values: Annotated[
         Path | None, typer.Option(help="A .csv with the columns symbol and value.")

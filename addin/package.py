@@ -10,6 +10,7 @@ import io
 import posixpath
 import re
 import zipfile
+from bisect import bisect_right
 from collections.abc import Iterable, Iterator, Mapping
 from pathlib import Path
 from typing import Any
@@ -221,6 +222,10 @@ class _Cells:
     def added(self, values: Mapping[str, CellValue]) -> Iterator[tuple[int, int, bytes]]:
         """Cells of array blocks that the file does not hold yet, and where they go."""
         known = {cell.address for cell in self.cells}
+        by_row: dict[int, list[tuple[int, int]]] = {}
+        for old in self.cells:
+            column, row = _place(old.address)
+            by_row.setdefault(row, []).append((column, old.start))
         new_rows: dict[int, list[bytes]] = {}
         for address, value in values.items():
             column, row = _place(address)
@@ -234,13 +239,16 @@ class _Cells:
                 continue
             if row not in self._rows:  # an empty row element: left as it is
                 continue
-            later = [c for c in self.cells if _place(c.address)[1] == row]
-            behind = [c.start for c in later if _place(c.address)[0] > column]
+            behind = [start for other, start in by_row.get(row, ()) if other > column]
             at = min(behind, default=self._rows[row])
             yield at, at, cell
+        rows = sorted(by_row)
         for row, cells in new_rows.items():
-            behind = [c.start for c in self.cells if _place(c.address)[1] > row]
-            before = self._xml.rfind(b"<row", 0, min(behind)) if behind else self._end
+            later = bisect_right(rows, row)
+            before = self._end
+            if later < len(rows):
+                first = min(start for _, start in by_row[rows[later]])
+                before = self._xml.rfind(b"<row", 0, first)
             yield before, before, b'<row r="%d">%s</row>' % (row, b"".join(cells))
 
     def _inside(self, column: int, row: int) -> bool:

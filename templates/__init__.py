@@ -7,7 +7,7 @@ from datetime import date
 from typing import TYPE_CHECKING
 
 from tausheet.functions.errors import TausheetError
-from tausheet.templates.model import Input, Sheet
+from tausheet.templates.model import Input, NumberColumn, Sheet
 from tausheet.templates.sheets import SHEETS
 from tausheet.templates.values import shown_unit
 
@@ -37,7 +37,8 @@ def build(
     """The workbook of a calc sheet, with formulas and without stored values.
 
     values: an input's symbol, SYMBOL_lo, SYMBOL_hi or SYMBOL_source, or a field of the heading,
-    to a text with a unit ("4.7 mF"), a number in base SI, or None for blank.
+    to a text with a unit ("4.7 mF"), a number in base SI, or None for blank; a cell of a table is
+    TABLE.COLUMN.ROW ("bounce.t_closed.1").
     demo: start from the values of the demo job. made: the date on the sheet, today by default.
     """
     from tausheet.templates import writer
@@ -46,7 +47,7 @@ def build(
 
 
 def describe_inputs(name: str) -> list[tuple[str, str, str, str]]:
-    """For each input its symbol, description, units or choices, and demo value."""
+    """For each input and column its symbol, description, units or choices, and demo value."""
     rows = []
     for entry in find(name).entries():
         if isinstance(entry, Input):
@@ -54,4 +55,13 @@ def describe_inputs(name: str) -> list[tuple[str, str, str, str]]:
         else:
             offered = "; ".join(entry.options)
         rows.append((entry.symbol, entry.description, offered, entry.demo.value))
+    for table in find(name).filled_in:
+        for place, column in enumerate(table.columns):
+            if isinstance(column, NumberColumn):
+                offered = ", ".join(shown_unit(unit) for unit in column.units)
+            else:
+                offered = "; ".join(getattr(column, "options", ("a text",)))
+            key = f"{table.symbol}.{column.name}.1 to {table.rows}"
+            first = table.demo[0][place] if table.demo else ""
+            rows.append((key, f"{table.title}: {column.heading}", offered, first))
     return rows

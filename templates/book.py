@@ -15,22 +15,39 @@ from openpyxl.worksheet.worksheet import Worksheet
 from tausheet.functions.units import units_of
 from tausheet.templates import style
 from tausheet.templates.formulas import SheetError
-from tausheet.templates.model import COUNT, NUMBER, UNITLESS, Entry, Quantity, Sheet
+from tausheet.templates.model import (
+    COUNT,
+    NUMBER,
+    UNITLESS,
+    Entry,
+    EntryColumn,
+    Quantity,
+    Sheet,
+)
 from tausheet.templates.values import Typed
+from tausheet.templates.values_tables import TypedTable
 
 MAIN = "Calc sheet"
 ENTRIES = "Entries"
 CORNERS = "Worst case"
 CURVE = "Curve"
 TABLES = "Tables"
+ROWS = "Rows"
 
 
 class Book:
     """One calc sheet on its way into a workbook."""
 
-    def __init__(self, sheet: Sheet, typed: Mapping[str, Typed], texts: Mapping[str, str]) -> None:
+    def __init__(
+        self,
+        sheet: Sheet,
+        typed: Mapping[str, Typed],
+        texts: Mapping[str, str],
+        tables: Mapping[str, TypedTable],
+    ) -> None:
         self.sheet = sheet
         self.typed = typed
+        self.typed_tables = tables
         self.texts = texts
         self.workbook = Workbook()
         first = self.workbook.active
@@ -41,6 +58,8 @@ class Book:
         self.corners = self.workbook.create_sheet(CORNERS)
         self.curve = self.workbook.create_sheet(CURVE)
         self.tables = self.workbook.create_sheet(TABLES)
+        if sheet.filled_in:
+            self.rows = self.workbook.create_sheet(ROWS)
         self.quantity_of = {q.symbol: q.quantity for q in sheet.quantities()}
         self.check_rows: list[int] = []
         self._names: set[str] = set()
@@ -150,6 +169,11 @@ def with_values(book: Book, sentence: str) -> str:
 
 def measured(sheet: Sheet) -> list[str]:
     """The quantities with units that a sheet enters or shows, in order."""
-    items: Iterable[Entry | Quantity] = (*sheet.entries(), *sheet.quantities())
+    columns = [column for table in sheet.filled_in for column in table.columns]
+    items: Iterable[Entry | Quantity | EntryColumn] = (
+        *sheet.entries(),
+        *sheet.quantities(),
+        *columns,
+    )
     found = dict.fromkeys(getattr(item, "quantity", COUNT) for item in items)
     return [quantity for quantity in found if quantity not in UNITLESS]

@@ -16,7 +16,7 @@ from openpyxl.formula.tokenizer import Token
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import TausheetError
 from tausheet.functions.units import units_of
-from tausheet.templates.model import UNITLESS, Choice, Formed, Input, Sheet, Tolerance
+from tausheet.templates.model import COUNT, UNITLESS, Formed, Input, Sheet, Tolerance
 
 BUILT_INS = frozenset(
     """
@@ -27,6 +27,20 @@ BUILT_INS = frozenset(
     """.split()  # noqa: SIM905
 )
 """The built-in functions that a sheet may use: those that every engine of ours computes alike."""
+
+
+ELEMENTWISE = frozenset(
+    ("IF", "ISNUMBER", "ABS", "SIGN", "INT", "MOD", "ROUND", "LEN", "EXACT", "EXP", "LN", "SQRT")
+)
+"""Those that every engine computes row by row where they are given a column."""
+
+LONG = 100
+"""Rows of a table beyond which it has a formula a column instead of one a cell."""
+
+PAGE_COLUMNS = 7
+"""Columns of the page that a table may take."""
+
+_ROW = ("here", "above")
 
 
 class SheetError(TausheetError):
@@ -108,6 +122,13 @@ def dependencies(sheet: Sheet) -> dict[str, set[str]]:
     for table in sheet.tables:
         for column in table.columns:
             graph[f"{table.name}_{column.name}"] = set()
+    for filled in sheet.filled_in:
+        columns = {f"{filled.symbol}_{column.name}" for column in filled.columns}
+        used = set().union(*(names_in(rule.holds) for rule in filled.rules))
+        own = {re.sub(rf"^{filled.symbol}_", f"{kind}_", name) for name in columns for kind in _ROW}
+        for name in (*columns, f"{filled.symbol}_count"):
+            graph[name] = used - own - {"here_row"}
+        graph[filled.symbol] = columns
     for formed in sheet.formed:
         cells = cells_of(formed)
         for heading in formed.columns:
@@ -183,6 +204,7 @@ def check(sheet: Sheet) -> None:
                 f"({', '.join(sorted(tainted))}); it must do without"
             )
     _check_worst_cases(sheet)
+    _check_filled_in(sheet)
 
 
 def _check_names(sheet: Sheet, graph: Mapping[str, set[str]]) -> None:
@@ -195,12 +217,14 @@ def _check_names(sheet: Sheet, graph: Mapping[str, set[str]]) -> None:
             raise SheetError(f"{sheet.name}: {name} reads as a cell, so it cannot be a name")
     if len({name.lower() for name in graph}) < len(graph):
         raise SheetError(f"{sheet.name}: two names differ only by case")
-    for item in (*sheet.entries(), *sheet.quantities()):
-        if isinstance(item, Choice) or item.quantity in UNITLESS:
+    columns = [column for table in sheet.filled_in for column in table.columns]
+    for item in (*sheet.entries(), *sheet.quantities(), *columns):
+        quantity = getattr(item, "quantity", COUNT)
+        if quantity in UNITLESS:
             continue
-        fitting = units_of(item.quantity)
-        if isinstance(item, Input) and not set(item.units) <= fitting.keys():
-            raise SheetError(f"{sheet.name}: {item.symbol} offers a unit that does not fit")
+        if not set(getattr(item, "units", ())) <= units_of(quantity).keys():
+            named = getattr(item, "symbol", getattr(item, "name", ""))
+            raise SheetError(f"{sheet.name}: {named} offers a unit that does not fit")
 
 
 def fit_for_a_name(name: str) -> bool:
@@ -208,6 +232,28 @@ def fit_for_a_name(name: str) -> bool:
     legal = re.fullmatch(r"[A-Za-z_][A-Za-z0-9_]*", name)
     as_cell = re.fullmatch(r"[A-Za-z]{1,3}[0-9]+|[Rr][0-9]*([Cc][0-9]*)?|[Cc][0-9]*", name)
     return bool(legal) and not as_cell and name.upper() not in ("TRUE", "FALSE")
+
+
+def _check_filled_in(sheet: Sheet) -> None:
+    for table in sheet.filled_in:
+        where = f"{sheet.name}: the table {table.symbol}"
+        names = [column.name for column in table.columns]
+        if {"source", "count"} & set(names) or len(set(names)) < len(names):
+            raise SheetError(f"{where} has a column name twice, or one of its own (source, count)")
+        if any(len(row) != len(names) for row in table.demo) or len(table.demo) > table.rows:
+            raise SheetError(f"{where} has a demo that does not fit into it")
+        if not table.worksheet and sum(column.span for column in table.columns) > PAGE_COLUMNS:
+            raise SheetError(f"{where} is wider than the page; give it a worksheet")
+        for column in table.columns:
+            options = getattr(column, "options", ())
+            if len(",".join(options)) > 255 or any("," in option for option in options):
+                raise SheetError(f"{where} offers words that no drop-down list can hold")
+        for rule in table.rules if table.rows > LONG else ():
+            if wrong := functions_in(rule.holds) - ELEMENTWISE:
+                raise SheetError(
+                    f"{where} is long, so that its rules are computed for all rows at once, which "
+                    f"{', '.join(sorted(wrong))} cannot; use {', '.join(sorted(ELEMENTWISE))}"
+                )
 
 
 def _formulas(sheet: Sheet) -> Iterable[tuple[str, str, set[str]]]:
@@ -226,6 +272,10 @@ def _formulas(sheet: Sheet) -> Iterable[tuple[str, str, set[str]]]:
         for part in worst.parts:
             if part.inside:
                 yield f"the worst case of {worst.of}", part.inside, set()
+    for filled in sheet.filled_in:
+        places = {f"{kind}_{column.name}" for column in filled.columns for kind in _ROW}
+        for rule in filled.rules:
+            yield f"a rule of {filled.symbol}", rule.holds, places | {"here_row"}
     for formed in sheet.formed:
         places = {f"here_{column}" for column in formed.columns}
         for row, column, text in cells_of(formed):

@@ -3,8 +3,8 @@
 Formulas are texts without the leading "=", written in symbols: "R_unit*C_unit". Besides the
 symbols of the inputs and quantities they may use, for every input with a tolerance, `SYMBOL_lo`
 and `SYMBOL_hi` (its extremes); for every worst case `SYMBOL_min` and `SYMBOL_max`; for every
-second way `SYMBOL_hand`; for every table `TABLE_COLUMN`, and `TABLE` itself where formulas fill it.
-Everything is in base SI units.
+second way `SYMBOL_hand`; for every table `TABLE_COLUMN`, and `TABLE` itself where formulas or the
+engineer fill it. Everything is in base SI units.
 """
 
 from __future__ import annotations
@@ -286,6 +286,76 @@ class Formed:
 
 
 @dataclass(frozen=True)
+class NumberColumn:
+    """A column of quantities to be filled in; its unit is chosen once for the whole column.
+
+    `low`, `high` and `why` are those of an Input. Where `needed` is false, cells may stay blank.
+    `span` is how many columns of the page it takes.
+    """
+
+    name: str
+    heading: str
+    quantity: str
+    units: tuple[str, ...]
+    low: float
+    high: float
+    why: str
+    needed: bool = True
+    span: int = 1
+
+
+@dataclass(frozen=True)
+class WordColumn:
+    """A column of words, each picked from a list."""
+
+    name: str
+    heading: str
+    options: tuple[str, ...]
+    needed: bool = True
+    span: int = 1
+
+
+@dataclass(frozen=True)
+class TextColumn:
+    """A column of free texts such as names; a number typed there is taken as a text."""
+
+    name: str
+    heading: str
+    needed: bool = True
+    span: int = 1
+
+
+EntryColumn: TypeAlias = NumberColumn | WordColumn | TextColumn
+
+
+@dataclass(frozen=True)
+class EntryTable:
+    """A table that the engineer fills in from the top; rows left blank at its end do not count.
+
+    Formulas know it as `symbol`, a column as `symbol_COLUMN` and the number of rows filled in as
+    `symbol_count`. Blank cells reach them as empty texts, which our functions take for blanks; a
+    row at fault reaches them as #N/A. `least` is how many rows must be filled in.
+
+    In `rules`, conditions on each row, `here_COLUMN` is the cell of that row, `above_COLUMN` that
+    of the row above (such a rule leaves the first row out), `here_row` the row's number from 1.
+
+    A table with a `worksheet` stands on a worksheet of that title instead of on the page.
+    `row` names a row where one is spoken of; `demo` holds texts such as "2 ms", "" for a blank.
+    """
+
+    symbol: str
+    title: str
+    columns: tuple[EntryColumn, ...]
+    rows: int
+    demo: tuple[tuple[str, ...], ...]
+    demo_source: str
+    rules: tuple[Rule, ...] = ()
+    least: int = 1
+    worksheet: str = ""
+    row: str = "row"
+
+
+@dataclass(frozen=True)
 class Picture:
     """The circuit: a picture beside the module, and the line on what is switched when."""
 
@@ -324,6 +394,7 @@ class Sheet:
     demo: Heading
     tables: tuple[Table, ...] = field(default=())
     formed: tuple[Formed, ...] = field(default=())
+    filled_in: tuple[EntryTable, ...] = field(default=())
 
     def entries(self) -> Iterator[Entry]:
         """Every input, in the order of the page."""

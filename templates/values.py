@@ -12,7 +12,16 @@ from openpyxl.cell.cell import ILLEGAL_CHARACTERS_RE
 
 from tausheet.functions.errors import TausheetError
 from tausheet.functions.units import canonical, in_unit, si, units_of
-from tausheet.templates.model import UNITLESS, Choice, Demo, Entry, Input, Sheet, Tolerance
+from tausheet.templates.model import (
+    UNITLESS,
+    Choice,
+    Demo,
+    Entry,
+    Input,
+    NumberColumn,
+    Sheet,
+    Tolerance,
+)
 
 FIELDS = (
     "doc_number",
@@ -58,10 +67,12 @@ def read(
 ) -> tuple[dict[str, Typed], dict[str, str]]:
     """The typed entries of every input, and the texts of the heading.
 
-    Keys are an input's symbol, `SYMBOL_lo`, `SYMBOL_hi`, `SYMBOL_source`, or one of FIELDS.
+    Keys are an input's symbol, `SYMBOL_lo`, `SYMBOL_hi`, `SYMBOL_source`, or one of FIELDS; keys
+    with a dot name cells of tables, which `values_tables` reads.
     """
-    given = {k: v for k, v in (values or {}).items() if v is not None and v != ""}
-    blanked = set(values or {}) - given.keys()
+    own = {key: value for key, value in (values or {}).items() if "." not in key}
+    given = {k: v for k, v in own.items() if v is not None and v != ""}
+    blanked = own.keys() - given.keys()
     entries = {entry.symbol: _blank(entry) for entry in sheet.entries()}
     texts = {"doc_title": sheet.title, "status": STATUSES[0]}
     if demo:
@@ -90,7 +101,7 @@ def read(
     # values before their extremes, which stand in the unit of the value
     for key, value in sorted(given.items(), key=lambda item: item[0][-3:] in ("_lo", "_hi")):
         if key in FIELDS:
-            texts[key] = _text(key, value)
+            texts[key] = checked_text(key, value)
             if key == "status" and texts[key] not in STATUSES:
                 raise ValueRefused(f'status is "{texts[key]}"; use one of: {", ".join(STATUSES)}')
         else:
@@ -129,9 +140,9 @@ def _demo(entry: Entry) -> Typed:
 
 def _entered(entry: Entry, part: str, value: str | float, typed: Typed) -> Typed:
     if part == "source":
-        return _with(typed, source=_text(f"{entry.symbol}_source", value))
+        return _with(typed, source=checked_text(f"{entry.symbol}_source", value))
     if isinstance(entry, Choice):
-        text = _text(entry.symbol, value)
+        text = checked_text(entry.symbol, value)
         if text not in entry.options:
             raise ValueRefused(
                 f'{entry.symbol} is "{text}"; use one of: {"; ".join(entry.options)}'
@@ -140,25 +151,25 @@ def _entered(entry: Entry, part: str, value: str | float, typed: Typed) -> Typed
     key = entry.symbol + {"value": "", "lowest": "_lo", "highest": "_hi"}[part]
     if part != "value" and entry.tolerance is Tolerance.PERCENT:
         return _with(typed, **{part: _percent(key, value)})
-    number, unit = _number(key, entry, value)
+    number, unit = number_of(key, entry, value)
     if part == "value":
         if not unit:
-            unit = _readable(entry, number)
+            unit = readable(entry, number)
             number = _in(number, unit)
         extremes = {
-            name: _in(_si(limit, typed.unit), unit)
+            name: converted(limit, typed.unit, unit)
             for name in ("lowest", "highest")
             if entry.tolerance is Tolerance.ABSOLUTE and unit != typed.unit
             if (limit := getattr(typed, name)) is not None
         }
         return _with(typed, value=number, unit=unit, **extremes)
     if unit != typed.unit:
-        number = _in(_si(number, unit), typed.unit)
+        number = converted(number, unit, typed.unit)
     return _with(typed, **{part: number})
 
 
-def _number(key: str, entry: Input, value: str | float) -> tuple[float, str]:
-    """A number with its unit; without one it is in base SI."""
+def number_of(key: str, entry: Input | NumberColumn, value: str | float) -> tuple[float, str]:
+    """A number with its unit; without one it is in base SI and the unit is ""."""
     if not isinstance(value, str):
         return _finite(key, float(value)), ""
     number, unit = _split(key, value)
@@ -203,13 +214,18 @@ def _finite(key: str, number: float) -> float:
     return number
 
 
-def _readable(entry: Input, number: float) -> str:
+def readable(entry: Input | NumberColumn, number: float) -> str:
     """The offered unit in which a base SI number reads well."""
     if not entry.units:
         return ""
     sizes = sorted((units_of(entry.quantity)[unit], unit) for unit in entry.units)
     fitting = [unit for size, unit in sizes if size <= abs(number) * (1 + 1e-12)]
     return fitting[-1] if fitting else entry.units[0] if number == 0 else sizes[0][1]
+
+
+def converted(number: float, unit: str, to: str) -> float:
+    """A number in one unit, "" for base SI, expressed in another."""
+    return _in(_si(number, unit), to)
 
 
 def _in(number: float, unit: str) -> float:
@@ -220,7 +236,8 @@ def _si(number: float, unit: str) -> float:
     return float(si(number, unit)) if unit else number
 
 
-def _text(key: str, value: str | float) -> str:
+def checked_text(key: str, value: str | float) -> str:
+    """A text that a cell of the page can hold and show."""
     text = str(value).strip()
     if len(text) > LONGEST:
         raise ValueRefused(f"{key} has {len(text)} characters; at most {LONGEST} can be shown")

@@ -17,6 +17,7 @@ from tausheet.templates import (
     formulas,
     style,
     values,
+    values_tables,
     writer_calculation,
     writer_checks,
     writer_curve,
@@ -40,7 +41,7 @@ def build(
     """The workbook of a calc sheet, with formulas and without stored values."""
     formulas.check(sheet)
     typed, texts = values.read(sheet, given, demo)
-    book = Book(sheet, typed, texts)
+    book = Book(sheet, typed, texts, values_tables.read(sheet, given, demo))
     _set_up(book)
     page = Page(book.main, sum(writer_heading.STRIP_POINTS))
     writer_heading.strip(page, book)
@@ -102,7 +103,7 @@ def _finish(book: Book) -> None:
         sheet.protection.formatRows = False
         if sheet is not book.main:
             sheet.sheet_view.showGridLines = False
-            sheet.freeze_panes = "A4"
+            sheet.freeze_panes = sheet.freeze_panes or "A4"
             sheet.print_area = "A2"  # an empty cell: these are to be looked up, not printed
     # recomputing at load would replace stored values by #NAME? where the add-in is absent
     book.workbook.calculation = CalcProperties(calcId=191029, fullCalcOnLoad=False)

@@ -94,7 +94,7 @@ def _number_of_checks(book: Book) -> int:
 
 
 def _number_of_inputs(book: Book) -> int:
-    return sum(1 for _ in book.sheet.entries())
+    return sum(1 for _ in book.sheet.entries()) + len(book.sheet.filled_in)
 
 
 def _decides() -> str:
@@ -277,7 +277,8 @@ def warning_name(name: str) -> str:
 
 def sources_missing(book: Book) -> Hazard:
     """The warning that some inputs do not say where they come from."""
-    blanks = "+".join(f"ISBLANK(source_of_{entry.symbol})" for entry in book.sheet.entries())
+    asked = (*book.sheet.entries(), *book.sheet.filled_in)
+    blanks = "+".join(f"ISBLANK(source_of_{entry.symbol})" for entry in asked)
     return Hazard(
         "Source missing",
         f"{blanks}>0",

@@ -13,7 +13,15 @@ from tausheet.functions.units import text as unit_text
 from tausheet.templates import style
 from tausheet.templates.book import Book, address, base_unit, table_name, text_literal
 from tausheet.templates.formulas import renamed
-from tausheet.templates.model import COUNT, UNITLESS, Choice, Entry, Input, Tolerance
+from tausheet.templates.model import (
+    COUNT,
+    UNITLESS,
+    Choice,
+    Entry,
+    Input,
+    NumberColumn,
+    Tolerance,
+)
 from tausheet.templates.values import shown_unit
 
 TOP = 4
@@ -236,7 +244,7 @@ def a(noun: str) -> str:
     return f"{'an' if noun[0] in 'aeiou' else 'a'} {noun}"
 
 
-def allowed_range(entry: Input) -> str:
+def allowed_range(entry: Input | NumberColumn) -> str:
     """The physical range of an input, as the page writes it."""
     return f"{plain_text(entry.low, entry.quantity)} to {plain_text(entry.high, entry.quantity)}"
 

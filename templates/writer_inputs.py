@@ -6,7 +6,7 @@ from collections.abc import Callable
 
 from openpyxl.worksheet.datavalidation import DataValidation
 
-from tausheet.templates import style, writer_entries
+from tausheet.templates import style, writer_entries, writer_entry_tables
 from tausheet.templates.book import Book, address, area
 from tausheet.templates.model import COUNT, Choice, Entry, Input, Tolerance
 from tausheet.templates.page import Page
@@ -54,6 +54,10 @@ def write(page: Page, book: Book) -> None:
         for entry in group.entries:
             _Row(page, book, entry, writer_entries.TOP + number, lambda: page.head(HEAD))
             number += 1
+    place = 1
+    for table in book.sheet.filled_in:
+        place = writer_entry_tables.write(page, book, table, writer_entries.TOP + number, place)
+        number += 1
     writer_entries.name_states(book, number)
 
 

@@ -15,9 +15,19 @@ from tausheet.addin import embedded
 from tausheet.functions.errors import ErrorKind
 from tausheet.functions.units import si
 from tausheet.templates import writer
-from tausheet.templates.model import COUNT, Choice, Entry, Sheet, Tolerance
+from tausheet.templates.formulas import LONG
+from tausheet.templates.model import (
+    COUNT,
+    Choice,
+    Entry,
+    EntryTable,
+    Sheet,
+    TextColumn,
+    Tolerance,
+    WordColumn,
+)
 
-TYPED = re.compile(r"(value|unit|lowest|highest|source)_of_")
+TYPED = re.compile(r"(values?|unit|lowest|highest|source)_of_")
 
 
 class Filled:
@@ -92,7 +102,8 @@ class Filled:
 
     def inputs_are_valid(self) -> bool:
         """Whether every input can be used."""
-        return bool(self["inputs_valid"] == len(list(self.sheet.entries())))
+        asked = len(list(self.sheet.entries())) + len(self.sheet.filled_in)
+        return bool(self["inputs_valid"] == asked)
 
 
 def short(sheet: Sheet) -> Sheet:
@@ -143,6 +154,40 @@ def bad_values(entry: Entry) -> Iterator[tuple[str, dict[str, Any]]]:
             yield f"{end} error", {cell: ErrorKind.NUM}
             yield f"{end} on the wrong side", {cell: outward * 1e3}
             yield f"{end} huge", {cell: outward * 1e300}
+
+
+def bad_cells(table: EntryTable) -> Iterator[tuple[str, dict[str, Any]]]:
+    """Everything that can be wrong in the first row of a table, and with its units."""
+    for column in table.columns:
+        name = f"{table.symbol}_{column.name}"
+        value = f"values_of_{name}" if table.rows > LONG else f"value_of_{name}_1"
+        yield f"{name} error", {value: ErrorKind.NA}
+        if column.needed:
+            yield f"{name} blank", {value: None}
+        if isinstance(column, TextColumn):
+            yield f"{name} long", {value: "x" * 60}
+            continue
+        yield f"{name} text", {value: "abc"}
+        if isinstance(column, WordColumn):
+            yield f"{name} number", {value: 1.0}
+            continue
+        if column.low > 0:
+            yield f"{name} zero", {value: 0.0}
+        yield f"{name} huge", {value: 1e300}
+        yield f"{name} negative huge", {value: -1e300}
+        if column.units:
+            unit = f"unit_of_{name}"
+            yield f"{name} blank unit", {unit: None}
+            yield f"{name} error as unit", {unit: ErrorKind.VALUE}
+            yield f"{name} wrong unit", {unit: "A" if column.quantity == "capacitance" else "µF"}
+
+
+def assert_table_refused(filled: Filled, table: EntryTable) -> None:
+    """The sheet fails, and says so beside this table."""
+    assert filled["verdict"] == "FAIL"
+    assert "rows filled in" not in filled[f"remark_on_{table.symbol}"]
+    assert len(filled[f"remark_on_{table.symbol}"]) > 15
+    assert filled["decided_by"] == f"An input is missing or at fault: {table.symbol}"
 
 
 def assert_refused(filled: Filled, symbol: str) -> None:

@@ -11,7 +11,7 @@ from typing import Any
 
 import pytest
 import random_sets
-from filled import Filled, assert_refused, bad_values, short
+from filled import Filled, assert_refused, assert_table_refused, bad_cells, bad_values, short
 
 from tausheet import templates
 from tausheet.addin import embedded
@@ -87,6 +87,17 @@ def asked_for(filled: Filled, entry: Entry) -> dict[str, Any]:
 @pytest.mark.parametrize(("name", "symbol"), CASES)
 def test_bad_input_never_passes(demo: Any, name: str, symbol: str) -> None:
     every_bad_value(demo(name), symbol, basic=True)
+
+
+@pytest.mark.parametrize("name", templates.SHEETS)
+def test_bad_cells_of_tables_never_pass(demo: Any, name: str) -> None:
+    filled: Filled = demo(name)
+    for table in filled.sheet.filled_in:
+        for kind, bad in bad_cells(table):
+            try:
+                assert_table_refused(filled.put(**bad), table)
+            except AssertionError as error:
+                raise AssertionError(f"{kind}: {error}") from None
 
 
 @pytest.mark.campaign

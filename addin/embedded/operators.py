@@ -46,6 +46,10 @@ def _raised(a: float, b: float) -> float | ErrorKind:
 
 def _arithmetic(function: Callable[[float, float], float | ErrorKind]) -> Callable[..., Scalar]:
     def on_values(a: Scalar, b: Scalar) -> Scalar:
+        if type(a) is float and type(b) is float:  # most are, and this is the quickest way
+            quick = function(a, b)
+            if type(quick) is float and math.isfinite(quick):
+                return quick
         x, y = number(a), number(b)
         if isinstance(x, ErrorKind):
             return x

@@ -11,6 +11,7 @@ import re
 import unicodedata
 from collections.abc import Callable, Iterator
 from decimal import Decimal
+from itertools import repeat
 from typing import Any, TypeAlias
 
 from tausheet.functions.errors import ErrorKind
@@ -120,6 +121,8 @@ def folded(text: str) -> str:
 
 def compared(a: Scalar, b: Scalar) -> int | ErrorKind:
     """-1, 0 or 1: numbers before texts, texts without regard to case; TRUE and FALSE are 1, 0."""
+    if type(a) is float and type(b) is float:
+        return 0 if nearly_equal(a, b) else (a > b) - (a < b)
     for value in (a, b):
         if isinstance(value, ErrorKind):
             return value
@@ -147,6 +150,8 @@ def in_order(a: Scalar, b: Scalar) -> int | ErrorKind:
 
 def truth(value: Scalar) -> bool | ErrorKind:
     """A value where a condition belongs."""
+    if type(value) is bool:
+        return value
     as_number = number(value)
     return as_number if isinstance(as_number, ErrorKind) else as_number != 0
 
@@ -161,7 +166,12 @@ def each(function: Callable[..., Scalar], *values: Value) -> Value:
     grids = [value if type(value) is list else [[value]] for value in values]
     height = max(len(grid) for grid in grids)
     width = max(len(grid[0]) for grid in grids)
-
+    if width == 1 and all(len(grid) in (1, height) for grid in grids):
+        columns = [
+            repeat(grid[0][0], height) if len(grid) == 1 else [row[0] for row in grid]
+            for grid in grids
+        ]
+        return [[cell] for cell in map(function, *columns)]
     if any(len(g) not in (1, height) or len(g[0]) not in (1, width) for g in grids):
         raise NotHere("ranges of different sizes, element by element")
 
