@@ -105,6 +105,21 @@ def new(
 
 
 @app.command()
+def index(
+    out: Annotated[Path, typer.Argument(help="The workbook to make, an .xlsx.")],
+    force: ForceOption = False,
+    engine: EngineOption = Engine.embedded,
+) -> None:
+    """A workbook of all cell functions, each with a live example and its check value."""
+    from tausheet.addin.make import NotMade, make_index
+
+    agree, count = make_index(out, force=force, engine=engine.value)
+    console.print(f"{out}: {agree} of {count} results agree with what is expected")
+    if agree < count:
+        raise NotMade(f"{out} shows which results differ; do not rely on this installation")
+
+
+@app.command()
 def recalc(
     files: Annotated[list[Path], typer.Argument(help="Workbooks to compute.")],
     out: Annotated[

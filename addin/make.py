@@ -43,10 +43,30 @@ def make_sheet(
     engine: str = "embedded",
 ) -> Made:
     """Build a calc sheet, compute it, store the values and put the file into place."""
-    if out.suffix.lower() != ".xlsx":
-        raise NotMade(f"{out} does not end in .xlsx; a calc sheet is a plain workbook")
-    files.refuse_existing(out, force=force)
+    _refuse(out, force)
     workbook = templates.build(name, given, demo=demo)
+    values = _write(workbook, out, force, engine)
+    return _summary(out, templates.SHEETS[name].title, workbook, values)
+
+
+def make_index(out: Path, *, force: bool = False, engine: str = "embedded") -> tuple[int, int]:
+    """The workbook of all cell functions; how many results agree, and of how many."""
+    from tausheet.templates import index, writer_index
+
+    _refuse(out, force)
+    workbook = writer_index.build()
+    said = _named(workbook, _write(workbook, out, force, engine), "agreements")
+    return said.count(writer_index.AGREES), len(index.EXAMPLES)
+
+
+def _refuse(out: Path, force: bool) -> None:
+    if out.suffix.lower() != ".xlsx":
+        raise NotMade(f"{out} does not end in .xlsx; what is made is a plain workbook")
+    files.refuse_existing(out, force=force)
+
+
+def _write(workbook: Any, out: Path, force: bool, engine: str) -> Values:
+    """Compute a workbook, store the values and put the file into place whole."""
     with files.replacing(out, force=force) as temporary:
         workbook.save(temporary)
         if engine == "embedded":
@@ -56,7 +76,7 @@ def make_sheet(
         else:
             values = engine_named(engine)(temporary)
         temporary.write_bytes(package.with_values(temporary.read_bytes(), values))
-    return _summary(out, templates.SHEETS[name].title, workbook, values)
+    return values
 
 
 def _summary(path: Path, title: str, workbook: Any, values: Values) -> Made:

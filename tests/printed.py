@@ -1,4 +1,4 @@
-"""What a calc sheet looks like on paper, for tests: its pages, its texts, the room they have."""
+"""What a workbook of ours is on paper, for tests: its pages, its texts, the room they have."""
 
 from __future__ import annotations
 
@@ -40,16 +40,17 @@ def pages_of(
 
 
 def plain(text: str) -> str:
-    """A text without the spaces and breaks that a page puts elsewhere."""
-    return re.sub(r"[\s\ufffe\u00ad]+", "", text)
+    """A text without the spaces and breaks that a page puts elsewhere, and without hyphens."""
+    return re.sub(r"[\s\ufffe\u00ad-]+", "", text)
 
 
 def shown(workbook: Workbook, values: dict[str, dict[str, Any]]) -> list[tuple[str, str]]:
     """Every text of the page, computed ones included, by cell."""
-    computed = values["Calc sheet"]
+    sheet = workbook.worksheets[0]
+    computed = values[sheet.title]
     return [
         (cell.coordinate, text)
-        for row in workbook["Calc sheet"].iter_rows()
+        for row in sheet.iter_rows()
         for cell in row
         if isinstance(text := computed.get(cell.coordinate, cell.value), str) and text.strip()
     ]
@@ -78,17 +79,17 @@ def lines_of(text: str, room: float, size: float, bold: bool) -> int:
 
 def assert_no_text_is_cut(workbook: Workbook, texts: list[tuple[str, str]]) -> None:
     """Every text fits into its cell, measured with the font that prints it."""
-    sheet = workbook["Calc sheet"]
+    sheet = workbook.worksheets[0]
     spans = {str(area).split(":")[0]: area for area in sheet.merged_cells.ranges}
     for coordinate, text in texts:
         cell = sheet[coordinate]
-        first, last = cell.column, cell.column
+        first, last, rows = cell.column, cell.column, 1
         if coordinate in spans:
-            last = spans[coordinate].max_col
+            last, rows = spans[coordinate].max_col, spans[coordinate].size["rows"]
         widths = list(style.COLUMNS.values())[first - 1 : last]
         room = sum(widths) - 4 - 9 * (cell.alignment.indent or 0)
         lines = lines_of(text, room, cell.font.sz, bool(cell.font.b))
         if not cell.alignment.wrap_text:
             assert lines == 1, (coordinate, text)
-        height = sheet.row_dimensions[cell.row].height
+        height = sum(sheet.row_dimensions[cell.row + i].height for i in range(rows))
         assert lines * cell.font.sz * 1.17 <= height + 0.5, (coordinate, text)
