@@ -100,6 +100,12 @@ class Filled:
         title, cell = self.places[f"value_of_{symbol}"]
         return self.values[title][f"H{cell[1:]}"]
 
+    def at_fault(self, entry: Entry | EntryTable) -> bool:
+        """Whether an input or a table is at fault."""
+        if isinstance(entry, EntryTable):
+            return "rows filled in" not in self[f"remark_on_{entry.symbol}"]
+        return bool(self.state(entry.symbol) == "AT FAULT")
+
     def inputs_are_valid(self) -> bool:
         """Whether every input can be used."""
         asked = len(list(self.sheet.entries())) + len(self.sheet.filled_in)
@@ -182,20 +188,17 @@ def bad_cells(table: EntryTable) -> Iterator[tuple[str, dict[str, Any]]]:
             yield f"{name} wrong unit", {unit: "A" if column.quantity == "capacitance" else "µF"}
 
 
-def assert_table_refused(filled: Filled, table: EntryTable) -> None:
-    """The sheet fails, and says so beside this table."""
+def assert_refused(filled: Filled, entry: Entry | EntryTable) -> None:
+    """The sheet fails, says so beside this input or table, and computes with no value of it."""
+    symbol = entry.symbol
     assert filled["verdict"] == "FAIL"
-    assert "rows filled in" not in filled[f"remark_on_{table.symbol}"]
-    assert len(filled[f"remark_on_{table.symbol}"]) > 15
-    assert filled["decided_by"] == f"An input is missing or at fault: {table.symbol}"
-
-
-def assert_refused(filled: Filled, symbol: str) -> None:
-    """The sheet fails, says so beside this input, and computes with no value of it."""
-    assert filled["verdict"] == "FAIL"
-    assert filled[f"remark_on_{symbol}"].startswith(f"{symbol}")
-    assert len(filled[f"remark_on_{symbol}"]) > len(symbol) + 15
     assert filled["decided_by"] == f"An input is missing or at fault: {symbol}"
+    assert filled.at_fault(entry)
+    remark = filled[f"remark_on_{symbol}"]
+    assert len(remark) > len(symbol) + 15
+    if isinstance(entry, EntryTable):
+        return
+    assert remark.startswith(f"{symbol}")
     used = filled.places.get(f"{symbol}_lo"), filled.places[symbol]
     for place in (place for place in used if place):
         assert isinstance(filled.values[place[0]][place[1]], ErrorKind), place

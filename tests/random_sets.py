@@ -6,11 +6,19 @@ import math
 import random
 from typing import Any
 
-from filled import Filled, bad_values
+from filled import Filled, bad_cells, bad_values
 
 from tausheet.functions.errors import ErrorKind
 from tausheet.functions.units import in_unit
-from tausheet.templates.model import COUNT, Choice, Entry, Input, Tolerance
+from tausheet.templates.model import (
+    COUNT,
+    Choice,
+    Entry,
+    EntryTable,
+    Input,
+    NumberColumn,
+    Tolerance,
+)
 
 TRIES = 60
 SPREADS = (0.05, 0.2, 0.6)
@@ -23,29 +31,30 @@ def valid(filled: Filled, draw: random.Random) -> dict[str, Any]:
 
     What a rule refuses is drawn again, everything now and then; nearer to the demo each time.
     """
-    entries = list(filled.sheet.entries())
+    entries = (*filled.sheet.entries(), *filled.sheet.filled_in)
     spread = draw.choice(SPREADS)
-    cells = _drawn(filled, draw, entries, spread)
+    drawn = {entry.symbol: _drawn(filled, entry, draw, spread) for entry in entries}
     for number in range(TRIES):
+        cells = {name: value for each in drawn.values() for name, value in each.items()}
         filled.put(**cells)
-        refused = [entry for entry in entries if filled.state(entry.symbol) == "AT FAULT"]
+        refused = [entry for entry in entries if filled.at_fault(entry)]
         if not refused and not _tie(filled):
             return cells
-        again = entries if number % 5 == 4 else refused or entries
-        symbols = {entry.symbol for entry in again}
-        cells = {name: x for name, x in cells.items() if name.split("_of_")[1] not in symbols}
-        cells |= _drawn(filled, draw, again, spread * (1 - number / TRIES))
+        spread_now = spread * (1 - number / TRIES)
+        for entry in entries if number % 5 == 4 else refused or entries:
+            drawn[entry.symbol] = _drawn(filled, entry, draw, spread_now)
     raise AssertionError(f"{filled.sheet.name}: no valid set in {TRIES} draws")
 
 
 def invalid(
     filled: Filled, base: dict[str, Any], draw: random.Random
-) -> tuple[str, dict[str, Any]]:
-    """An input's symbol, and the cells of a valid set but for this input, which is at fault."""
-    entry = draw.choice(list(filled.sheet.entries()))
+) -> tuple[Entry | EntryTable, dict[str, Any]]:
+    """An input or a table, and the cells of a valid set but for it, which is at fault."""
+    entry = draw.choice((*filled.sheet.entries(), *filled.sheet.filled_in))
+    wrong = bad_cells(entry) if isinstance(entry, EntryTable) else bad_values(entry)
     # an empty cell may be allowed; and LibreOffice goes on showing TRUE where TRUE once stood
-    kinds = [bad for kind, bad in bad_values(entry) if kind not in ("blank", "truth")]
-    return entry.symbol, base | draw.choice(kinds)
+    kinds = [bad for kind, bad in wrong if kind not in ("blank", "truth")]
+    return entry, base | draw.choice(kinds)
 
 
 def _tie(filled: Filled) -> bool:
@@ -56,16 +65,30 @@ def _tie(filled: Filled) -> bool:
 
 
 def _drawn(
-    filled: Filled, draw: random.Random, entries: list[Entry], spread: float
+    filled: Filled, entry: Entry | EntryTable, draw: random.Random, spread: float
 ) -> dict[str, Any]:
-    cells: dict[str, Any] = {}
-    for entry in entries:
-        name = f"value_of_{entry.symbol}"
-        if isinstance(entry, Choice):
-            if draw.random() < spread:
-                cells[name] = draw.choice(entry.options)
-        elif filled.typed[name] is not None:
-            cells |= _number(filled, entry, draw, spread)
+    """New cells for an input or a table; those that it leaves out stay as in the demo."""
+    if isinstance(entry, EntryTable):
+        return _table(filled, entry, draw, spread)
+    name = f"value_of_{entry.symbol}"
+    if isinstance(entry, Choice):
+        return {name: draw.choice(entry.options)} if draw.random() < spread else {}
+    return {} if filled.typed[name] is None else _number(filled, entry, draw, spread)
+
+
+def _table(filled: Filled, table: EntryTable, draw: random.Random, spread: float) -> dict[str, Any]:
+    """Some numbers of a table changed; of a long one, those of the first row."""
+    cells = {}
+    for column in table.columns:
+        name = f"{table.symbol}_{column.name}"
+        for place in sorted(
+            filled.typed.keys()
+            & {f"values_of_{name}", *(f"value_of_{name}_{row + 1}" for row in range(table.rows))}
+        ):
+            typed = filled.typed[place]
+            measured = isinstance(column, NumberColumn) and column.quantity != COUNT
+            if measured and isinstance(typed, (int, float)) and draw.random() < 0.5:
+                cells[place] = typed * math.exp(draw.uniform(-spread, spread))
     return cells
 
 

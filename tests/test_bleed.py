@@ -249,7 +249,7 @@ BAD = [
 
 @pytest.mark.parametrize(("symbol", "cells"), BAD)
 def test_bad_input_never_passes(demo: Filled, symbol: str, cells: dict[str, Any]) -> None:
-    assert_refused(demo.put(**cells), symbol)
+    assert_refused(demo.put(**cells), ENTRIES[symbol])
 
 
 @pytest.mark.parametrize("symbol", ENTRIES)
@@ -258,7 +258,7 @@ def test_bad_input_never_passes_in_calc(in_calc: Filled, demo: Filled, symbol: s
     # Calc keeps showing a cell that held TRUE as a truth value, whatever is entered next
     kinds = [bad for bad in bad_values(ENTRIES[symbol]) if bad[0] != "truth"]
     _, cells = kinds[list(ENTRIES).index(symbol) % len(kinds)]
-    assert_refused(in_calc.put(**cells), symbol)
+    assert_refused(in_calc.put(**cells), ENTRIES[symbol])
     assert differences(demo.put(**cells), in_calc) == []
 
 
@@ -445,7 +445,7 @@ def test_own_limit_is_needed_only_where_chosen(demo: Filled) -> None:
     assert demo["check_time"] == "FAIL"  # 3 min are not enough here; the inputs are fine
     assert demo["inputs_valid"] == len(ENTRIES)
     demo.put(value_of_limit=name, value_of_V_own=1e6)
-    assert_refused(demo, "V_own")
+    assert_refused(demo, ENTRIES["V_own"])
 
 
 def test_start_below_the_safe_voltage_is_a_slip(demo: Filled) -> None:
@@ -453,11 +453,11 @@ def test_start_below_the_safe_voltage_is_a_slip(demo: Filled) -> None:
     assert demo["verdict"] == "FAIL"
     demo.put(value_of_V_start=59, lowest_of_V_start=58, highest_of_V_start=60)
     assert demo["remark_on_V_start"].startswith("V_start is not above the safe voltage")
-    assert_refused(demo, "V_start")
+    assert_refused(demo, ENTRIES["V_start"])
 
 
 def test_taps_need_a_multiple_of_the_levels(demo: Filled) -> None:
-    assert_refused(demo.put(value_of_n_rs=3), "n_rs")
+    assert_refused(demo.put(value_of_n_rs=3), ENTRIES["n_rs"])
 
 
 def test_blank_sheet_fails_and_asks_for_everything(tmp_path: Path) -> None:

@@ -48,6 +48,6 @@ def compare(
             assert differences(here, there.put(**cells)) == [], (number, cells)
             assert there["verdict"] in ("PASS", "FAIL")
         for number in range(invalid):
-            symbol, cells = random_sets.invalid(here, draw.choice(sets), draw)
-            assert_refused(here.put(**cells), symbol)
+            entry, cells = random_sets.invalid(here, draw.choice(sets), draw)
+            assert_refused(here.put(**cells), entry)
             assert differences(here, there.put(**cells)) == [], (number, cells)

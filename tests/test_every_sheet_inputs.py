@@ -11,7 +11,7 @@ from typing import Any
 
 import pytest
 import random_sets
-from filled import Filled, assert_refused, assert_table_refused, bad_cells, bad_values, short
+from filled import Filled, assert_refused, bad_cells, bad_values, short
 
 from tausheet import templates
 from tausheet.addin import embedded
@@ -95,7 +95,7 @@ def test_bad_cells_of_tables_never_pass(demo: Any, name: str) -> None:
     for table in filled.sheet.filled_in:
         for kind, bad in bad_cells(table):
             try:
-                assert_table_refused(filled.put(**bad), table)
+                assert_refused(filled.put(**bad), table)
             except AssertionError as error:
                 raise AssertionError(f"{kind}: {error}") from None
 
@@ -111,7 +111,7 @@ def every_bad_value(filled: Filled, symbol: str, basic: bool) -> None:
     asked = asked_for(filled, entry) if entry.needed else {}
     for kind, bad in wrong_values(entry, basic):
         try:
-            assert_refused(filled.put(**asked, **bad), symbol)
+            assert_refused(filled.put(**asked, **bad), entry)
         except AssertionError as error:
             raise AssertionError(f"{symbol}, {kind}: {error}") from None
 
