@@ -73,10 +73,20 @@ def when(formula: str, ground: str = "", letters: str = INK, bold: bool = True) 
 
 @cache
 def align(
-    horizontal: str = "left", vertical: str = "center", wrap: bool = False, indent: int = 0
+    horizontal: str = "left",
+    vertical: str = "center",
+    wrap: bool = False,
+    indent: int = 0,
+    shrink: bool = False,
 ) -> Alignment:
     """How a text stands in its cell."""
-    return Alignment(horizontal=horizontal, vertical=vertical, wrap_text=wrap, indent=indent)
+    return Alignment(
+        horizontal=horizontal,
+        vertical=vertical,
+        wrap_text=wrap,
+        indent=indent,
+        shrink_to_fit=shrink,
+    )
 
 
 HAIR = Side(style="hair", color=LINE)

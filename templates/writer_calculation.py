@@ -22,19 +22,24 @@ HEAD = (
     ("G", "second way", "right"),
     ("H", "difference", "center"),
 )
+INTRODUCTION = 28
+BLOCK = 16 + 14
+"""Points of the sentence below the heading of the part, and of the heading of a block."""
+
 NO_REASON = "no result: an input that it needs is missing or at fault"
 
 
 def write(page: Page, book: Book) -> None:
     """Write the calculation."""
-    page.part(PART, "Calculation")
+    first = book.sheet.blocks[0].quantities[0]
+    page.part(PART, "Calculation", INTRODUCTION + BLOCK + sum(_heights(page, first)))
     page.quiet(
         "Formulas use the names of the symbols and base SI units. The second way uses the "
         "spreadsheet's own functions alone, so that it can be followed without the add-in; the "
         "difference is relative.",
     )
     for block in book.sheet.blocks:
-        page.keep(16 + 14 + 40)
+        page.keep(BLOCK + sum(_heights(page, block.quantities[0])))
         row = page.down(16)
         page.text(row, "A:H", block.title, style.font(9, bold=True), vertical="bottom")
         page.head(HEAD)
@@ -42,15 +47,22 @@ def write(page: Page, book: Book) -> None:
             _quantity(page, book, quantity)
 
 
-def _quantity(page: Page, book: Book, quantity: Quantity) -> None:
+def _heights(page: Page, quantity: Quantity) -> tuple[float, float]:
+    """Points that the two rows of a quantity take."""
     principal = bool(quantity.second)
     upper = 3 + style.line_height(8.5) * style.lines_needed(
         quantity.description, page.width("B"), 8.5, bold=principal
     )
     words = style.lines_needed(quantity.words, page.width("B:H"), 7.5)
     lower = 4 + style.line_height(7.5) * (max(words, 2) if principal else words)
+    return max(upper, 15), lower
+
+
+def _quantity(page: Page, book: Book, quantity: Quantity) -> None:
+    principal = bool(quantity.second)
+    upper, lower = _heights(page, quantity)
     page.keep(upper + lower, lambda: page.head(HEAD))
-    row = page.down(max(upper, 15))
+    row = page.down(upper)
     below = page.down(lower)
     symbol = quantity.symbol
     page.text(row, "A", symbol, style.font(9, bold=True))

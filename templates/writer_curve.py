@@ -29,6 +29,7 @@ from tausheet.functions.units import units_of
 from tausheet.templates import style
 from tausheet.templates.book import Book
 from tausheet.templates.formulas import renamed
+from tausheet.templates.model import Curve
 from tausheet.templates.page import Page
 from tausheet.templates.values import shown_unit
 from tausheet.templates.writer_tables import ratio
@@ -92,20 +93,21 @@ class _Points:
         """Write every series."""
         curve = self.curve
         self.sheet["A1"] = (
-            f"Points of the curve: time in {shown_unit(curve.time_unit)}, {curve.y_title} in "
-            f"{shown_unit(curve.unit)}"
+            f"Points of the curve: time in {shown_unit(curve.time_unit)}, {_measured(curve)}"
         )
         self.sheet["A1"].font = style.font(11, bold=True, colour=style.DEEP)
         self._times()
         lines = [self._trace(trace.label, trace.formula) for trace in curve.traces]
-        highest = f"=MAX(C{TOP}:{get_column_letter(self.place - 1)}{self.last})"
+        drawn = f"{get_column_letter(self.place - len(curve.traces))}{TOP}:"
+        drawn += f"{get_column_letter(self.place - 1)}{self.last}"
+        lowest, highest = 0 if curve.from_zero else f"=MIN({drawn})", f"=MAX({drawn})"
         ends = (f"={self.times}{TOP}", f"={self.times}{self.last}")
         for level in curve.levels:
             height = f"=({level.value}){self.value_scale}"
             lines.append(self._few(level.label, "level", zip(ends, (height, height), strict=True)))
         for moment in curve.moments:
             at = f"=({moment.time}){self.time_scale}"
-            lines.append(self._few(moment.label, "moment", ((at, 0), (at, highest))))
+            lines.append(self._few(moment.label, "moment", ((at, lowest), (at, highest))))
         for mark in curve.marks:
             point = (f"=({mark.time}){self.time_scale}", f"=({mark.value}){self.value_scale}")
             lines.append(self._few(mark.label, "mark", (point,)))
@@ -155,8 +157,15 @@ class _Points:
         return _Line(label, kind, times, values, row)
 
 
+def _measured(curve: Curve) -> str:
+    """What the vertical axis shows, and in which unit."""
+    return f"{curve.y_title} in {shown_unit(curve.unit)}" if curve.unit else curve.y_title
+
+
 def _scale(quantity: str, unit: str) -> str:
     """The end of a formula that turns base SI into the unit of an axis."""
+    if not unit:
+        return ""
     over, under = ratio(units_of(quantity)[unit])
     return "" if over == under else f"*{under:.0f}/{over:.0f}"
 
@@ -170,7 +179,7 @@ def _chart(book: Book, lines: list[_Line]) -> ScatterChart:
         chart.series.append(_series(book, line, seen[line.kind]))
         seen[line.kind] += 1
     _axis(chart.x_axis, f"time after switching in {shown_unit(curve.time_unit)}")
-    _axis(chart.y_axis, f"{curve.y_title} in {shown_unit(curve.unit)}")
+    _axis(chart.y_axis, _measured(curve))
     if curve.from_zero:
         chart.y_axis.scaling.min = 0
     chart.legend = Legend(legendPos="b", overlay=False, txPr=_letters(850))

@@ -21,6 +21,9 @@ SIGN_OFF_PART = 3
 MOST_PIXELS = 270
 """Height that a circuit may take."""
 
+SCALE = 0.42
+"""Pixels of the page for one of a picture at most: letters are then of one size on all sheets."""
+
 EMU = 9525
 """Units of a drawing in a pixel."""
 
@@ -49,6 +52,7 @@ def strip(page: Page, book: Book) -> None:
     )
     for row, span, name, font in entries:
         cell = page.text(row, span, None, font)
+        cell.alignment = style.align("left", "center", shrink=True)
         book.input_cell(cell, book.texts.get(name) or None)
         page.frame(row, span, style.BOX)
         book.define(name, sheet, cell.coordinate)
@@ -75,7 +79,7 @@ def purpose(page: Page, book: Book) -> None:
     page.down(4)
     picture = _Picture(book.sheet.picture.file)
     width = page.width("A:H")
-    scale = min(width / picture.width, MOST_PIXELS / picture.height)
+    scale = min(width / picture.width, MOST_PIXELS / picture.height, SCALE)
     picture.width, picture.height = int(picture.width * scale), int(picture.height * scale)
     height = picture.height * 72 / 96 + 6
     page.keep(height)

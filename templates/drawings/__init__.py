@@ -49,7 +49,8 @@ def write(file: str, folder: Path = HERE) -> None:
     kept.add_itxt("labels", "|".join(labels(file)))
     schemdraw.use("matplotlib")
     pixels = io.BytesIO()
-    _drawn(file).draw(show=False).getfig().savefig(pixels, format="png", dpi=200)
+    figure = _drawn(file).draw(show=False).getfig()
+    figure.savefig(pixels, format="png", dpi=200, bbox_inches="tight")
     image = Image.open(pixels).convert("L")
     inside = image.point(lambda level: 255 if level < 250 else 0).getbbox()
     assert inside is not None, "the drawing is empty"

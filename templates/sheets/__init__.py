@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from tausheet.templates.model import Sheet
-from tausheet.templates.sheets import bleed
+from tausheet.templates.sheets import bleed, sampling
 
-SHEETS: dict[str, Sheet] = {sheet.name: sheet for sheet in (bleed.SHEET,)}
+SHEETS: dict[str, Sheet] = {sheet.name: sheet for sheet in (bleed.SHEET, sampling.SHEET)}
 """Every calc sheet by its name."""
