@@ -55,14 +55,14 @@ def _heights(page: Page, quantity: Quantity) -> tuple[float, float]:
     )
     words = style.lines_needed(quantity.words, page.width("B:H"), 7.5)
     lower = 4 + style.line_height(7.5) * (max(words, 2) if principal else words)
-    return max(upper, 15), lower
+    return upper, lower
 
 
 def _quantity(page: Page, book: Book, quantity: Quantity) -> None:
     principal = bool(quantity.second)
     upper, lower = _heights(page, quantity)
     page.keep(upper + lower, lambda: page.head(HEAD))
-    row = page.down(upper)
+    row = page.down(max(upper, 15))
     below = page.down(lower)
     symbol = quantity.symbol
     page.text(row, "A", symbol, style.font(9, bold=True))

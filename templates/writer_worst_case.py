@@ -213,18 +213,19 @@ def _on_page(page: Page, book: Book, worst: WorstCase, table: _Corners) -> None:
     quantity = book.quantity_of[of]
     description = next(q.description for q in book.sheet.quantities() if q.symbol == of)
     description = description.removesuffix(", nominal")
-    page.keep(32 + 14 * (len(worst.parts) + 1) + 110)
+    descriptions = {entry.symbol: entry.description for entry in book.sheet.entries()}
+    heights = [_height(page, descriptions[part.symbol]) for part in worst.parts]
+    page.keep(32 + 14 + sum(heights) + 110)
     row = page.down(16)
     page.text(row, "A:H", f"{of}: {description}", style.font(9, bold=True), vertical="bottom")
     page.head(ALONE)
-    descriptions = {entry.symbol: entry.description for entry in book.sheet.entries()}
-    for number, part in enumerate(worst.parts):
-        row = page.down(15)
+    for number, (part, height) in enumerate(zip(worst.parts, heights, strict=True)):
+        row = page.down(height)
         at = table.TOP + number
         cell = {letter: address(table.sheet, f"{letter}{at}") for letter in "BCDEI"}
         measured = quantity_for(book, part.symbol)
         page.text(row, "A", part.symbol, style.font(9, bold=True))
-        page.text(row, "B", descriptions[part.symbol], style.font(8.5))
+        page.text(row, "B", descriptions[part.symbol], style.font(8), wrap=True)
         for span, formula in (
             ("C", in_words(cell["B"], measured)),
             ("D:E", in_words(cell["C"], measured)),
@@ -236,6 +237,13 @@ def _on_page(page: Page, book: Book, worst: WorstCase, table: _Corners) -> None:
         swing.number_format = style.RELATIVE
         page.frame(row, "A:H", style.UNDER)
     _methods(page, book, worst, table, quantity)
+
+
+def _height(page: Page, description: str) -> float:
+    """Points that the row of a part takes."""
+    return max(
+        15, 3 + style.line_height(8.5) * style.lines_needed(description, page.width("B"), 8)
+    )
 
 
 def _methods(page: Page, book: Book, worst: WorstCase, table: _Corners, quantity: str) -> None:
