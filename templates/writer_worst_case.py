@@ -241,9 +241,7 @@ def _on_page(page: Page, book: Book, worst: WorstCase, table: _Corners) -> None:
 
 def _height(page: Page, description: str) -> float:
     """Points that the row of a part takes."""
-    return max(
-        15, 3 + style.line_height(8.5) * style.lines_needed(description, page.width("B"), 8)
-    )
+    return max(15, 3 + style.line_height(8.5) * style.lines_needed(description, page.width("B"), 8))
 
 
 def _methods(page: Page, book: Book, worst: WorstCase, table: _Corners, quantity: str) -> None:
