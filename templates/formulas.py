@@ -281,6 +281,11 @@ def _formulas(sheet: Sheet) -> Iterable[tuple[str, str, set[str]]]:
         for row, column, text in cells_of(formed):
             above = {f"above_{column}" for column in formed.columns} if row else set()
             yield f"row {row + 1} of {formed.name}, {column},", text, places | above
+    for listing in sheet.listings:
+        yield f"the table {listing.name}", listing.shown, {"here_row"}
+        for shown in listing.columns:
+            yield f"the table {listing.name}", shown.formula, {"here_row"}
+            yield f"the table {listing.name}", shown.unit or '""', set()
     for one in sheet.checks:
         yield f"check {one.key}", one.value, set()
         yield f"check {one.key}", one.limit, set()

@@ -286,6 +286,38 @@ class Formed:
 
 
 @dataclass(frozen=True)
+class ListColumn:
+    """A column of a table of results: a formula for one row, in which `here_row` is its number.
+
+    `quantity` is what it measures, "" for a text. `unit`, a formula, replaces the base unit of the
+    quantity where that depends on an input. `span` is how many columns of the page it takes.
+    """
+
+    name: str
+    heading: str
+    formula: str
+    quantity: str = ""
+    span: int = 1
+    unit: str = ""
+
+
+@dataclass(frozen=True)
+class Listing:
+    """A table of results on the page, after the calculation, to be read: a row for each thing.
+
+    Values are shown as texts with units. `rows` is the most there can be; a row is shown while
+    `shown`, a formula that may use `here_row`, is true. `lines` is how many lines of text fit.
+    """
+
+    name: str
+    title: str
+    columns: tuple[ListColumn, ...]
+    rows: int
+    shown: str
+    lines: int = 1
+
+
+@dataclass(frozen=True)
 class NumberColumn:
     """A column of quantities to be filled in; its unit is chosen once for the whole column.
 
@@ -395,6 +427,7 @@ class Sheet:
     tables: tuple[Table, ...] = field(default=())
     formed: tuple[Formed, ...] = field(default=())
     filled_in: tuple[EntryTable, ...] = field(default=())
+    listings: tuple[Listing, ...] = field(default=())
 
     def entries(self) -> Iterator[Entry]:
         """Every input, in the order of the page."""

@@ -17,6 +17,7 @@ from tausheet.templates import (
     writer_curve,
     writer_heading,
     writer_inputs,
+    writer_listings,
     writer_tables,
     writer_texts,
     writer_worst_case,
@@ -46,6 +47,7 @@ def build(
     writer_tables.write(book)
     writer_inputs.write(page, book)
     writer_calculation.write(page, book)
+    writer_listings.write(page, book)
     writer_worst_case.write(page, book)
     writer_checks.write(page, book)
     writer_curve.write(page, book)

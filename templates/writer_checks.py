@@ -278,7 +278,10 @@ def warning_name(name: str) -> str:
 def sources_missing(book: Book) -> Hazard:
     """The warning that some inputs do not say where they come from."""
     asked = (*book.sheet.entries(), *book.sheet.filled_in)
-    blanks = "+".join(f"ISBLANK(source_of_{entry.symbol})" for entry in asked)
+    blanks = "+".join(
+        f"IF({getattr(entry, 'needed', '') or 'TRUE'},ISBLANK(source_of_{entry.symbol})*1,0)"
+        for entry in asked
+    )
     return Hazard(
         "Source missing",
         f"{blanks}>0",

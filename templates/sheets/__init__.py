@@ -3,7 +3,14 @@
 from __future__ import annotations
 
 from tausheet.templates.model import Sheet
-from tausheet.templates.sheets import bleed, sampling
+from tausheet.templates.sheets import bleed, sampling, sequence
 
-SHEETS: dict[str, Sheet] = {sheet.name: sheet for sheet in (bleed.SHEET, sampling.SHEET)}
+SHEETS: dict[str, Sheet] = {
+    sheet.name: sheet
+    for sheet in (
+        bleed.SHEET,
+        sampling.SHEET,
+        sequence.SHEET,
+    )
+}
 """Every calc sheet by its name."""
