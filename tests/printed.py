@@ -62,6 +62,7 @@ def letters(size: float, bold: bool) -> ImageFont.FreeTypeFont:
     return ImageFont.truetype(f"LiberationSans-{'Bold' if bold else 'Regular'}.ttf", size * 20)
 
 
+@cache
 def lines_of(text: str, room: float, size: float, bold: bool) -> int:
     """Lines that a text takes at a width in pixels, measured with the real font."""
     font = letters(size, bold)

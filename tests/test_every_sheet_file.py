@@ -41,6 +41,7 @@ class Made:
         self.path = folder / f"{name}.xlsx"
         make_sheet(name, self.path, {}, demo=True)
         self.formulas = load_workbook(self.path)
+        self.filled = Filled(templates.SHEETS[name], self.formulas)
         stored = load_workbook(self.path, data_only=True)
         self.stored: dict[str, dict[str, Any]] = {
             sheet.title: {
@@ -63,7 +64,7 @@ def made(tmp_path_factory: pytest.TempPathFactory) -> Any:
 def test_every_formula_has_a_stored_value(made: Any, name: str) -> None:
     """What a viewer without our functions shows; no error where a person looks."""
     demo: Made = made(name)
-    values = Filled(templates.SHEETS[name], demo.formulas).put().values
+    values = demo.filled.put().values
     ours = 0
     for title, cells in demo.stored.items():
         for cell, kept in cells.items():
@@ -118,21 +119,13 @@ def test_no_text_is_cut(made: Any, name: str) -> None:
     """With the demo's values, and with every input at fault, each in another way."""
     demo: Made = made(name)
     assert_no_text_is_cut(demo.formulas, shown(demo.formulas, demo.stored))
-    filled = Filled(templates.SHEETS[name], demo.formulas)
-    entries = list(filled.sheet.entries())
+    entries = list(templates.SHEETS[name].entries())
     for turn in range(3):
         cells: dict[str, Any] = {}
         for number, entry in enumerate(entries, start=turn):
             kinds = [bad for _, bad in bad_values(entry)]
             cells |= kinds[number % len(kinds)]
-        assert_no_text_is_cut(demo.formulas, shown(demo.formulas, filled.put(**cells).values))
-
-
-@pytest.mark.parametrize("name", templates.SHEETS)
-def test_no_text_of_the_blank_form_is_cut(name: str) -> None:
-    sheet = templates.SHEETS[name]
-    workbook = templates.build(name)
-    assert_no_text_is_cut(workbook, shown(workbook, Filled(sheet, workbook).put().values))
+        assert_no_text_is_cut(demo.formulas, shown(demo.formulas, demo.filled.put(**cells).values))
 
 
 def every_cell(book: Workbook) -> Iterator[tuple[str, Any]]:
@@ -265,9 +258,9 @@ def test_validation_refuses_with_a_sentence(made: Any, name: str) -> None:
 
 
 @pytest.mark.parametrize("name", templates.SHEETS)
-def test_curve_is_told_apart_without_colour(name: str) -> None:
+def test_curve_is_told_apart_without_colour(made: Any, name: str) -> None:
     sheet = templates.SHEETS[name]
-    (chart,) = templates.build(name, demo=True)["Calc sheet"]._charts
+    (chart,) = made(name).formulas["Calc sheet"]._charts
     axes = [axis.title.tx.rich.p[0].r[0].t for axis in (chart.x_axis, chart.y_axis)]
     assert re.search(r" in \S+$", axes[0])
     assert not sheet.curve.unit or axes[1].endswith(f" in {shown_unit(sheet.curve.unit)}")

@@ -12,6 +12,7 @@ from typing import Any
 import pytest
 import random_sets
 from filled import Filled, assert_refused, bad_cells, bad_values, short
+from printed import assert_no_text_is_cut, shown
 
 from tausheet import templates
 from tausheet.addin import embedded
@@ -126,6 +127,7 @@ def test_blank_form_fails_and_asks_for_everything(name: str) -> None:
         waits = "cannot be judged" if entry.needed else "is missing"
         assert blank[f"remark_on_{entry.symbol}"].startswith(f"{entry.symbol} {waits}")
     assert set(blank.checks().values()) == {"FAIL"}
+    assert_no_text_is_cut(workbook, shown(workbook, blank.values))
 
 
 def test_what_is_left_from_earlier_sets_is_computed_anew(demo: Any) -> None:
