@@ -7,6 +7,8 @@ the sheet has the inputs store, C_store, L_store, k_R, k_E and t_end.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 ROWS = 10
 CAPACITOR = 'store="capacitor"'
 THROUGH, DIODE, DRIVEN, HELD = "through R", "through R and diode", "constant current", "held"
@@ -40,7 +42,7 @@ def after(time: str, begin: str, heads: str, tau: str, stop: str) -> str:
     return f'IF({stop}="",{free},IF({time}>={tau}*LN(1-{begin}/{heads}),0,{free}))'
 
 
-def _every(formulas: list[tuple[str, ...]]) -> Rows:
+def _every(formulas: Sequence[tuple[str, ...]]) -> Rows:
     """The rows, blank where the table has no stage."""
     return tuple(
         tuple(f'IF({row}>stage_count,"",{formula})' for formula in line)
