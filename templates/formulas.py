@@ -140,6 +140,13 @@ def dependencies(sheet: Sheet) -> dict[str, set[str]]:
     return graph
 
 
+def tables_of(sheet: Sheet) -> set[str]:
+    """The names of every table that formulas or the engineer fill, and of their columns."""
+    names = {f"{formed.name}_{column}" for formed in sheet.formed for column in formed.columns}
+    names |= {f"{table.symbol}_{c.name}" for table in sheet.filled_in for c in table.columns}
+    return names | {f.name for f in sheet.formed} | {table.symbol for table in sheet.filled_in}
+
+
 def cells_of(formed: Formed) -> list[tuple[int, str, str]]:
     """Every cell of a formed table that is not blank: row from 0, column, formula."""
     return [

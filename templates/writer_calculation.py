@@ -6,7 +6,7 @@ from openpyxl.styles import Font
 
 from tausheet.templates import style
 from tausheet.templates.book import Book, base_unit, table_name, text_literal
-from tausheet.templates.formulas import outer_call
+from tausheet.templates.formulas import outer_call, tables_of
 from tausheet.templates.model import COUNT, UNITLESS, Quantity
 from tausheet.templates.page import Page
 from tausheet.templates.values import shown_unit
@@ -75,7 +75,7 @@ def _quantity(page: Page, book: Book, quantity: Quantity) -> None:
     page.text(
         below,
         "B:H",
-        _words(quantity) if principal else quantity.words,
+        _words(book, quantity) if principal else quantity.words,
         style.font(7.5, colour=style.QUIET),
         vertical="top",
         wrap=True,
@@ -135,11 +135,15 @@ def _second(page: Page, book: Book, quantity: Quantity, row: int) -> None:
     book.define(f"{symbol}_diff", page.worksheet, f"H{row}")
 
 
-def _words(quantity: Quantity) -> str:
+def _words(book: Book, quantity: Quantity) -> str:
     """The equation; or, where there is no result, the reason."""
     call = outer_call(quantity.formula)
     reason = text_literal(NO_REASON)
     if call:
         function, arguments = call
-        reason = f'IFERROR(FO_REASON("{function}",{",".join(arguments)}),{reason})'
+        asked = f'IFERROR(FO_REASON("{function}",{",".join(arguments)}),{reason})'
+        tables = [name for name in arguments if name in tables_of(book.sheet)]
+        # LibreOffice calls no function with an error in a range, so there is nothing to ask
+        wrong = "+".join(f"SUMPRODUCT(ISERROR({name})*1)" for name in tables)
+        reason = f"IF({wrong}>0,{reason},{asked})" if wrong else asked
     return f"=IF(ISERROR({quantity.symbol}),{reason},{text_literal(quantity.words)})"

@@ -152,8 +152,14 @@ class _Row:
                 cell.number_format = PERCENT
             book.define(f"{part}_of_{entry.symbol}", page.worksheet, f"{letter}{row}")
         used = f"={self.judgement.used()}"
+        if entry.needed:  # what is not asked for shows no error to the reader
+            asked, kept = (address(book.entries, f"{c}{self.at}") for c in "ML")
+            book.entries[f"L{self.at}"] = used
+            used = f'=IF({asked}=1,{kept},"-")'
+            book.define(entry.symbol, book.entries, f"L{self.at}")
+        else:
+            book.define(entry.symbol, page.worksheet, f"G{row}")
         page.text(row, "G", used, style.font(8, colour=style.QUIET), "right")
-        book.define(entry.symbol, page.worksheet, f"G{row}")
         if entry.tolerance is not Tolerance.NONE:
             book.define(f"{entry.symbol}_lo", book.entries, f"J{self.at}")
             book.define(f"{entry.symbol}_hi", book.entries, f"K{self.at}")
