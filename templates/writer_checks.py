@@ -114,9 +114,10 @@ def _decides() -> str:
 
 def write(page: Page, book: Book) -> None:
     """Write the checks and the named warnings."""
-    page.part(PART, "Checks", 90)
-    page.head(HEAD)
     checks = [*book.sheet.checks, agreement(book)]
+    # in one piece: a heading repeated inside the table would stand among the checks' names
+    page.part(PART, "Checks", 14 + sum(16 + _lower(page, check) for check in checks) + 18)
+    page.head(HEAD)
     for check in checks:
         _check(page, book, check)
     first, last = book.check_rows[0], book.check_rows[-1]
@@ -169,11 +170,15 @@ def passes(check: Check) -> str:
     return f"IF({limit}=0,{value}{sign}0,IF({limit}>0,{ratio}{sign}1,{ratio}{turned}1))"
 
 
+def _lower(page: Page, check: Check) -> float:
+    """How high the line with the basis of a check is."""
+    longest = re.sub(r"{\w+}", "x" * 36, check.basis)
+    return 4 + style.line_height(7.5) * style.lines_needed(longest, page.width("B:G"), 7.5)
+
+
 def _check(page: Page, book: Book, check: Check) -> None:
     basis = check.basis
-    longest = re.sub(r"{\w+}", "x" * 36, basis)
-    lines = style.lines_needed(longest, page.width("B:G"), 7.5)
-    lower = 4 + style.line_height(7.5) * lines
+    lower = _lower(page, check)
     page.keep(16 + lower, lambda: page.head(HEAD))
     row = page.down(16)
     below = page.down(lower)

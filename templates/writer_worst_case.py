@@ -43,8 +43,9 @@ METHODS = (
 
 def write(page: Page, book: Book) -> None:
     """Write every worst case of the sheet."""
-    page.part(PART, "Worst case", 120)
-    if not book.sheet.worst_cases:
+    first = book.sheet.worst_cases[:1]
+    page.part(PART, "Worst case", _tall(page, book, first[0]) if first else 60)
+    if not first:
         page.paragraph("A:H", "Each check below is against extremes that its formula names.")
     for number, worst in enumerate(book.sheet.worst_cases):
         worksheet = book.corners
@@ -208,6 +209,13 @@ class _Corners:
         return '&", "&'.join(words)
 
 
+def _tall(page: Page, book: Book, worst: WorstCase) -> float:
+    """How high a worst case stands on the page, in one piece."""
+    parts = {part.symbol for part in worst.parts}
+    rows = (e.description for e in book.sheet.entries() if e.symbol in parts)
+    return 32 + 14 + sum(_height(page, description) for description in rows) + 110
+
+
 def _on_page(page: Page, book: Book, worst: WorstCase, table: _Corners) -> None:
     of = worst.of
     quantity = book.quantity_of[of]
@@ -215,7 +223,7 @@ def _on_page(page: Page, book: Book, worst: WorstCase, table: _Corners) -> None:
     description = description.removesuffix(", nominal")
     descriptions = {entry.symbol: entry.description for entry in book.sheet.entries()}
     heights = [_height(page, descriptions[part.symbol]) for part in worst.parts]
-    page.keep(32 + 14 + sum(heights) + 110)
+    page.keep(_tall(page, book, worst))
     row = page.down(16)
     page.text(row, "A:H", f"{of}: {description}", style.font(9, bold=True), vertical="bottom")
     page.head(ALONE)

@@ -3,12 +3,18 @@
 from __future__ import annotations
 
 from tausheet.templates.model import Sheet
-from tausheet.templates.sheets import bleed, sampling, sequence
+from tausheet.templates.sheets import (
+    bleed,
+    precharge,
+    sampling,
+    sequence,
+)
 
 SHEETS: dict[str, Sheet] = {
     sheet.name: sheet
     for sheet in (
         bleed.SHEET,
+        precharge.SHEET,
         sampling.SHEET,
         sequence.SHEET,
     )
