@@ -73,7 +73,7 @@ def formulas() -> list[str]:
 
 
 ONE_ARGUMENT = [
-    "ABS", "COS", "EXP", "INT", "LN", "LOG10", "SIGN", "SIN", "SQRT", "LEN", "NOT",
+    "ABS", "ATAN", "COS", "EXP", "INT", "LN", "LOG10", "SIGN", "SIN", "SQRT", "LEN", "NOT",
     "ISBLANK", "ISERROR", "ISNUMBER", "ISTEXT", "ROUND",
 ]  # fmt: skip
 AREAS = ["Z1:Z4", "Z5:Z7", "Z6:Z9", "Z1:Z1", "Z2:Z3", "Z19:Z23", "Z16:Z16", "Z8:Z8", "Z13:Z15"]

@@ -40,7 +40,8 @@ CONSTANTS = [
 ]  # fmt: skip
 OPERATORS = ["+", "-", "*", "/", "^", "&", "=", "<>", "<", ">", "<=", ">="]
 ONE = [
-    "ABS", "COS", "EXP", "INT", "LN", "LOG10", "SIGN", "SIN", "SQRT", "LEN", "NOT", "ISBLANK",
+    "ABS", "ATAN", "COS", "EXP", "INT", "LN", "LOG10", "SIGN", "SIN", "SQRT", "LEN", "NOT",
+    "ISBLANK",
     "ISERROR",
     "ISNUMBER", "ISTEXT", "ISLOGICAL", "ROUND",
 ]  # fmt: skip

@@ -372,6 +372,7 @@ def _whole(call: Callable[..., Any], least: int, most: int) -> Builtin:
 
 BUILTINS: dict[str, Builtin] = {
     "ABS": _each(_of_numbers(abs), 1),
+    "ATAN": _each(_of_numbers(math.atan), 1),
     "COS": _each(_of_numbers(_circular(math.cos)), 1),
     "EXP": _each(_of_numbers(math.exp), 1),
     "INT": _each(_of_numbers(lambda x: float(math.floor(_settled(x)))), 1),

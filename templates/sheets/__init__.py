@@ -3,12 +3,7 @@
 from __future__ import annotations
 
 from tausheet.templates.model import Sheet
-from tausheet.templates.sheets import (
-    bleed,
-    precharge,
-    sampling,
-    sequence,
-)
+from tausheet.templates.sheets import bleed, fault, precharge, sampling, sequence
 
 SHEETS: dict[str, Sheet] = {
     sheet.name: sheet
@@ -16,6 +11,7 @@ SHEETS: dict[str, Sheet] = {
         bleed.SHEET,
         precharge.SHEET,
         sampling.SHEET,
+        fault.SHEET,
         sequence.SHEET,
     )
 }
