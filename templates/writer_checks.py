@@ -62,11 +62,7 @@ def verdict(page: Page, book: Book) -> None:
     book.define("tally", sheet, tally.coordinate)
     names = [hazard.name for hazard in hazards(book)]
     height = 3 + style.line_height(8.5) * style.lines_needed(
-<<<<<<< HEAD
         "; ".join([*names, f"see part {PART}"]), page.width("C:H") - 10, 8.5, bold=True
-=======
-        "; ".join((*names, f"see part {PART}")), page.width("C:H") - 10, 8.5, bold=True
->>>>>>> bf4bc55 (fault: calc sheet of peak, d.c. part and heat of a fault current)
     )
     row = page.down(height)
     page.text(row, "A:B", '="named warnings: "&warnings_shown', style.font(8.5), "right", "top")
