@@ -281,7 +281,7 @@ def test_symbols_in_the_drawing_are_those_of_the_sheet(name: str) -> None:
     known = {entry.symbol for entry in sheet.entries()}
     known |= {quantity.symbol for quantity in sheet.quantities()}
     symbols = set(re.findall(r"\b[A-Za-z]+_\w+\b", " ".join(said)))
-    assert len(symbols) > 2
+    assert len(symbols) > 1
     assert symbols <= known
     # the picture that ships is of this drawing: its labels are kept in it
     assert Image.open(drawings.HERE / sheet.picture.file).info["labels"] == "|".join(said)
