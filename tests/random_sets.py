@@ -17,6 +17,7 @@ from tausheet.templates.model import (
     EntryTable,
     Input,
     NumberColumn,
+    Sense,
     Tolerance,
 )
 
@@ -135,3 +136,19 @@ def assert_both_ways_agree(filled: Filled) -> None:
                 assert isinstance(second, ErrorKind), quantity.symbol
             else:
                 assert math.isclose(first, second, rel_tol=1e-9), (quantity.symbol, first, second)
+
+
+def assert_verdict_follows(filled: Filled) -> None:
+    """Each check says what its value and limit say when compared here, and the verdict sums up."""
+    for check in filled.sheet.checks:
+        if {check.value, check.limit} <= filled.places.keys():
+            value, limit = filled[check.value], filled[check.limit]
+            if isinstance(value, ErrorKind) or isinstance(limit, ErrorKind):
+                kept = False
+            elif check.sense is Sense.AT_MOST:
+                kept = value <= limit or math.isclose(value, limit, rel_tol=1e-12)
+            else:
+                kept = value >= limit or math.isclose(value, limit, rel_tol=1e-12)
+            assert filled[f"check_{check.key}"] == ("PASS" if kept else "FAIL"), check.key
+    passed = set(filled.checks().values()) == {"PASS"} and filled.inputs_are_valid()
+    assert filled["verdict"] == ("PASS" if passed else "FAIL")
