@@ -21,6 +21,9 @@ SIGN_OFF_PART = 3
 MOST_PIXELS = 270
 """Height that a circuit may take."""
 
+CLEAR = 8
+"""Pixels kept free at either side of a circuit, since print cuts at the edge of the page."""
+
 SCALE = 0.42
 """Pixels of the page for one of a picture at most: letters are then of one size on all sheets."""
 
@@ -78,12 +81,12 @@ def purpose(page: Page, book: Book) -> None:
     page.paragraph("A:H", book.sheet.purpose, 9.5)
     page.down(4)
     picture = _Picture(book.sheet.picture.file)
-    width = page.width("A:H")
+    width = page.width("A:H") - 2 * CLEAR
     scale = min(width / picture.width, MOST_PIXELS / picture.height, SCALE)
     picture.width, picture.height = int(picture.width * scale), int(picture.height * scale)
     height = picture.height * 72 / 96 + 6
     page.keep(height)
-    picture.place(page, page.down(height), (width - picture.width) / 2)
+    picture.place(page, page.down(height), CLEAR + (width - picture.width) / 2)
     page.worksheet.add_image(picture)
     page.paragraph("A:H", book.sheet.picture.switched, 8.5)
 

@@ -3,7 +3,14 @@
 from __future__ import annotations
 
 from tausheet.templates.model import Sheet
-from tausheet.templates.sheets import bleed, fault, precharge, sampling, sequence
+from tausheet.templates.sheets import (
+    bleed,
+    fault,
+    precharge,
+    ripple,
+    sampling,
+    sequence,
+)
 
 SHEETS: dict[str, Sheet] = {
     sheet.name: sheet
@@ -11,6 +18,7 @@ SHEETS: dict[str, Sheet] = {
         bleed.SHEET,
         precharge.SHEET,
         sampling.SHEET,
+        ripple.SHEET,
         fault.SHEET,
         sequence.SHEET,
     )
