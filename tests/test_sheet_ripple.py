@@ -115,7 +115,7 @@ def test_inductor_in_series_against_step_by_step_switching(demo: Filled) -> None
     least = switched(0.36 / 5.002, -1.2, 215.0, 1 / 392, 0.1)[0] / 5.002
     assert demo["I_least"] == pytest.approx(least, rel=1e-9)
     assert (demo["verdict"], demo.state("C_out")) == ("PASS", "not used")
-    stops = demo.put(**MAGNET | {"value_of_L_out": 4})
+    stops = demo.put(**MAGNET | {"value_of_L_out": 1})
     assert stops["I_least"] < 0
     assert (stops["verdict"], stops["check_ripple"]) == ("FAIL", "FAIL")
     assert isinstance(stops["V_rip"], ErrorKind)
