@@ -7,6 +7,7 @@ from tausheet.templates.sheets import (
     bleed,
     fault,
     precharge,
+    ride_through,
     ripple,
     sampling,
     sequence,
@@ -19,6 +20,7 @@ SHEETS: dict[str, Sheet] = {
         precharge.SHEET,
         sampling.SHEET,
         ripple.SHEET,
+        ride_through.SHEET,
         fault.SHEET,
         sequence.SHEET,
     )
