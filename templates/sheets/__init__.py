@@ -6,6 +6,7 @@ from tausheet.templates.model import Sheet
 from tausheet.templates.sheets import (
     bleed,
     fault,
+    overload,
     precharge,
     ride_through,
     ripple,
@@ -22,6 +23,7 @@ SHEETS: dict[str, Sheet] = {
         ripple.SHEET,
         ride_through.SHEET,
         fault.SHEET,
+        overload.SHEET,
         sequence.SHEET,
     )
 }
