@@ -292,7 +292,7 @@ def _formulas(sheet: Sheet) -> Iterable[tuple[str, str, set[str]]]:
         yield f"the table {listing.name}", listing.shown, {"here_row"}
         for shown in listing.columns:
             yield f"the table {listing.name}", shown.formula, {"here_row"}
-            yield f"the table {listing.name}", shown.unit or '""', set()
+            yield f"the table {listing.name}", shown.unit or '""', {"here_row"}
     for one in sheet.checks:
         yield f"check {one.key}", one.value, set()
         yield f"check {one.key}", one.limit, set()

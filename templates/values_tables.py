@@ -92,7 +92,9 @@ def _cell(column: EntryColumn, key: str, value: str | float) -> Raw:
     if isinstance(column, NumberColumn):
         return values.number_of(key, column, value)
     text = values.checked_text(key, value)
-    if isinstance(column, WordColumn) and text not in column.options:
+    if isinstance(column, WordColumn) and values.shown_unit(text) in column.options:
+        text = values.shown_unit(text)  # kohm for kΩ, as in numbers
+    elif isinstance(column, WordColumn) and text not in column.options:
         raise ValueRefused(f'{key} is "{text}"; use one of: {"; ".join(column.options)}')
     return text, ""
 

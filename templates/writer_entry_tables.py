@@ -156,16 +156,17 @@ class _OnPage(_Writing):
         head = 4 + style.line_height(7.5) * lines
         page.keep(16 + head + ROW * (1 + table.rows) + 2 * style.line_height(7.5) + 22)
         self.title = self._title()
-        row = page.down(head)
-        units = page.down(ROW)
+        row = units = page.down(head)
+        if any(map(has_unit, table.columns)):
+            units = page.down(ROW)
         first = units + 1
         letters = {}
         quiet = style.font(7.5, colour=style.QUIET)
         for column, span in zip(table.columns, self._spans(), strict=True):
             letters[column.name] = span[0]
             page.text(row, span, column.heading, quiet, "center", "bottom", wrap=True)
-            cell = page.text(units, span, None, style.font(8), "center")
             if has_unit(column):
+                cell = page.text(units, span, None, style.font(8), "center")
                 self._unit(column, cell)
                 page.frame(units, span, style.BOX)
         page.text(row, "H", "state", quiet, "center", "bottom")

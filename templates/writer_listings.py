@@ -71,7 +71,9 @@ def _read(column: ListColumn, number: int) -> str:
     value = renamed(column.formula, {"here_row": str(number)})
     if not column.quantity:
         return f'IFERROR({value},"no result")'
-    unit = column.unit or text_literal(base_unit(column.quantity))
+    unit = renamed(column.unit, {"here_row": str(number)}) or text_literal(
+        base_unit(column.quantity)
+    )
     if column.quantity in UNITLESS or column.quantity == "ratio":
         words = in_words(value, column.quantity)
     else:

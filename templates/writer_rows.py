@@ -20,6 +20,7 @@ from tausheet.templates.book import Book, address, area, quoted, table_name, tex
 from tausheet.templates.formulas import LONG, names_in, renamed
 from tausheet.templates.model import (
     COUNT,
+    NUMBER,
     UNITLESS,
     EntryColumn,
     EntryTable,
@@ -125,7 +126,7 @@ class Rows:
         )
         row = f'IF({code}>{self.of_the_whole},"{self.table.row} "&{first}&": ","")'
         return (
-            f'IF({code}=0,{self.table.symbol}_count&" of {self.table.rows} rows filled in; "'
+            f'IF({code}=0,{self.table.symbol}_count&" of {self.table.rows} rows filled in"'
             f"&{text_literal(self.allowed())},{row}&INDEX({sentences},{code}))"
         )
 
@@ -141,9 +142,9 @@ class Rows:
         ranges = [
             f"{c.heading} {allowed_range(c)}"
             for c in self.table.columns
-            if isinstance(c, NumberColumn)
+            if isinstance(c, NumberColumn) and c.quantity != NUMBER
         ]
-        return "allowed: " + "; ".join(ranges) if ranges else ""
+        return "; allowed: " + "; ".join(ranges) if ranges else ""
 
     def longest_remark(self) -> list[str]:
         """The sentences that the page must have room for."""

@@ -168,7 +168,7 @@ def bad_cells(table: EntryTable) -> Iterator[tuple[str, dict[str, Any]]]:
         name = f"{table.symbol}_{column.name}"
         value = f"values_of_{name}" if table.rows > LONG else f"value_of_{name}_1"
         yield f"{name} error", {value: ErrorKind.NA}
-        if column.needed:
+        if column.needed and (table.least or any(table.demo[:1])):
             yield f"{name} blank", {value: None}
         if isinstance(column, TextColumn):
             yield f"{name} long", {value: "x" * 60}

@@ -6,6 +6,7 @@ from tausheet.templates.model import Sheet
 from tausheet.templates.sheets import (
     bleed,
     fault,
+    network,
     overload,
     precharge,
     ride_through,
@@ -24,6 +25,7 @@ SHEETS: dict[str, Sheet] = {
         ride_through.SHEET,
         fault.SHEET,
         overload.SHEET,
+        network.SHEET,
         sequence.SHEET,
     )
 }
