@@ -219,7 +219,7 @@ def _changes(row: int) -> tuple[str, ...]:
         f"FO_STAGES({typed('start', row)},y_start,seq)",
         at_end,
         f"IF({CAPACITOR},FO_ENERGY_C({x},here_end),FO_ENERGY_L({x},here_end))",
-        f"{x}*{end}^2/2",
+        f"{x}*{end}*{end}/2",
         f"IF({row}=stage_count,{goes_on},{end})",
         crosses,
         f'IF({tau}="",0,IF({CAPACITOR},ABS({level}-{begin})/{r},ABS({begin})*{r}))',

@@ -45,7 +45,7 @@ def verdict(page: Page, book: Book) -> None:
     decides = page.text(
         row,
         "C:H",
-        f"={_decides()}",
+        f"={_decides(book)}",
         style.font(10.5, bold=True),
         wrap=True,
         indent=1,
@@ -97,19 +97,22 @@ def _number_of_inputs(book: Book) -> int:
     return sum(1 for _ in book.sheet.entries()) + len(book.sheet.filled_in)
 
 
-def _decides() -> str:
+def _decides(book: Book) -> str:
     """The input at fault; else the check that fails or passes by the least."""
     at_fault = (
         '"An input is missing or at fault: "&IFERROR(INDEX(input_symbols,MATCH(1,input_faults,0)),'
         '"see part 4")'
     )
     least = "MATCH(MIN(check_margins),check_margins,0)"
-    without = 'INDEX(check_names,MATCH("FAIL",check_results,0))&": no result"'
+    without = at_fault
+    for check in reversed([*book.sheet.checks, agreement(book)]):
+        named = text_literal(f"{check.criterion}: no result")
+        without = f"IF(ISERROR(({check.value})-({check.limit})),{named},{without})"
     closest = (
         f'INDEX(check_names,{least})&": "&INDEX(check_values,{least})&", "'
         f'&INDEX(check_limits,{least})&" allowed (margin "&ROUND(100*MIN(check_margins),1)&" %)"'
     )
-    return f"IF(SUM(input_faults)>0,{at_fault},IFERROR({closest},IFERROR({without},{at_fault})))"
+    return f"IF(SUM(input_faults)>0,{at_fault},IFERROR({closest},{without}))"
 
 
 def write(page: Page, book: Book) -> None:

@@ -75,7 +75,9 @@ def _drawn(
     name = f"value_of_{entry.symbol}"
     if isinstance(entry, Choice):
         return {name: draw.choice(entry.options)} if draw.random() < spread else {}
-    return {} if filled.typed[name] is None else _number(filled, entry, draw, spread)
+    if filled.typed[name] is None and not entry.needed:
+        return {}
+    return _number(filled, entry, draw, spread)
 
 
 def _table(filled: Filled, table: EntryTable, draw: random.Random, spread: float) -> dict[str, Any]:
@@ -97,7 +99,7 @@ def _table(filled: Filled, table: EntryTable, draw: random.Random, spread: float
 def _number(filled: Filled, entry: Input, draw: random.Random, spread: float) -> dict[str, Any]:
     symbol = entry.symbol
     unit = filled.typed.get(f"unit_of_{symbol}") or ""
-    typed = float(filled.typed[f"value_of_{symbol}"])
+    typed, ends = _typed(filled, entry, draw)
     low, high = ((float(in_unit(x, unit)) if unit else x) for x in (entry.low, entry.high))
 
     def within(number: float) -> float:
@@ -117,14 +119,26 @@ def _number(filled: Filled, entry: Input, draw: random.Random, spread: float) ->
         if entry.tolerance is Tolerance.PERCENT:
             bound = -90 if end == "lowest" else 200
             cells[name] = (
-                max(filled.typed[name] * share, bound)
-                if bound < 0
-                else min(filled.typed[name] * share, bound)
+                max(ends[end] * share, bound) if bound < 0 else min(ends[end] * share, bound)
             )
         elif entry.tolerance is Tolerance.ABSOLUTE:
             scale = value / typed if typed and entry.quantity != "temperature" else 1.0
-            cells[name] = within(value + (filled.typed[name] - typed) * scale * share)
+            cells[name] = within(value + (ends[end] - typed) * scale * share)
     return cells
+
+
+def _typed(filled: Filled, entry: Input, draw: random.Random) -> tuple[float, dict[str, float]]:
+    """Value and extremes of the demo, or numbers that suit the unit offered first."""
+    ends = {end: filled.typed.get(f"{end}_of_{entry.symbol}") for end in ("lowest", "highest")}
+    value = filled.typed[f"value_of_{entry.symbol}"]
+    if value is not None:
+        return float(value), ends
+    value = 10 ** draw.uniform(0, 2)
+    percent = entry.tolerance is Tolerance.PERCENT
+    return value, {"lowest": -10.0, "highest": 10.0} if percent else {
+        "lowest": 0.9 * value,
+        "highest": 1.1 * value,
+    }
 
 
 def assert_both_ways_agree(filled: Filled) -> None:

@@ -46,3 +46,23 @@ def test_an_overwritten_input_fails(workbook: Any, symbol: str, value: Any) -> N
 
 def test_the_sheet_as_made_passes(workbook: Any) -> None:
     assert said(workbook, "verdict") == "PASS"
+
+
+@pytest.mark.parametrize(
+    ("name", "criterion"),
+    [
+        ("P_allow", "Power of one resistor"),
+        ("t_safe_hand", "Both ways of each principal result agree"),
+    ],
+)
+def test_a_check_without_a_result_is_named(workbook: Any, name: str, criterion: str) -> None:
+    """Also where another check fails by its numbers."""
+    sheet, address = cell_of(workbook, name)
+    limit = cell_of(workbook, "value_of_V_rated")
+    before = workbook[sheet][address].value, workbook[limit[0]][limit[1]].value
+    workbook[sheet][address].value, workbook[limit[0]][limit[1]].value = "=NA()", 400
+    try:
+        assert said(workbook, "verdict") == said(workbook, "check_resistor_voltage") == "FAIL"
+        assert said(workbook, "decided_by") == f"{criterion}: no result"
+    finally:
+        workbook[sheet][address].value, workbook[limit[0]][limit[1]].value = before
