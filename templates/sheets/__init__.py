@@ -6,6 +6,7 @@ from tausheet.templates.model import Sheet
 from tausheet.templates.sheets import (
     bleed,
     fault,
+    heating,
     network,
     overload,
     precharge,
@@ -25,6 +26,7 @@ SHEETS: dict[str, Sheet] = {
         ride_through.SHEET,
         fault.SHEET,
         overload.SHEET,
+        heating.SHEET,
         network.SHEET,
         sequence.SHEET,
     )
