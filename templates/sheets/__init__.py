@@ -5,6 +5,7 @@ from __future__ import annotations
 from tausheet.templates.model import Sheet
 from tausheet.templates.sheets import (
     bleed,
+    delay,
     fault,
     heating,
     network,
@@ -21,6 +22,7 @@ SHEETS: dict[str, Sheet] = {
     for sheet in (
         bleed.SHEET,
         precharge.SHEET,
+        delay.SHEET,
         sampling.SHEET,
         ripple.SHEET,
         ride_through.SHEET,
