@@ -136,6 +136,7 @@ class _Row:
         quiet = style.font(9, colour=style.QUIET)
         if entry.units:
             cell = page.text(row, "D", None, style.font(9), indent=1)
+            cell.alignment = style.align(indent=1, shrink=True)
             book.input_cell(cell, shown_unit(typed.unit))
             book.define(f"unit_of_{entry.symbol}", page.worksheet, f"D{row}")
             units = ",".join(shown_unit(unit) for unit in entry.units)

@@ -21,17 +21,17 @@ def demo(tmp_path_factory: pytest.TempPathFactory) -> Filled:
 
 
 def integrated(
-    l: float,
+    henry: float,
     i: float,
     d: float,
     c: float,
     v: float,
-    level: float,  # noqa: E741
+    level: float,
 ) -> dict[str, float]:
     """L di/dt = -(R i + V) with the energies beside it, step by step to zero (scipy, DOP853)."""
 
     def rates(t: float, y: Any) -> list[float]:
-        return [-((d + c) * y[0] + v) / l, d * y[0] ** 2, c * y[0] ** 2, v * y[0]]
+        return [-((d + c) * y[0] + v) / henry, d * y[0] ** 2, c * y[0] ** 2, v * y[0]]
 
     def reached(t: float, y: Any) -> float:
         return float(y[0] - level)
@@ -41,7 +41,7 @@ def integrated(
 
     zero.terminal = True  # type: ignore[attr-defined]
     run = solve_ivp(
-        rates, (0, 40 * l / (d + c)), [i, 0, 0, 0], "DOP853", events=(reached, zero),
+        rates, (0, 40 * henry / (d + c)), [i, 0, 0, 0], "DOP853", events=(reached, zero),
         rtol=1e-11, atol=1e-12,
     )  # fmt: skip
     dump, wind, arc = run.y[1:, -1]
