@@ -118,7 +118,7 @@ def short(sheet: Sheet) -> Sheet:
     return replace(
         sheet,
         worst_cases=tuple(replace(worst, draws=8) for worst in sheet.worst_cases),
-        curve=replace(sheet.curve, points=12),
+        curve=replace(sheet.curve, points=24),
     )
 
 
