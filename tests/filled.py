@@ -15,7 +15,7 @@ from tausheet.addin import embedded
 from tausheet.functions.errors import ErrorKind
 from tausheet.functions.units import si
 from tausheet.templates import writer
-from tausheet.templates.book import CURVE
+from tausheet.templates.book import CORNERS, CURVE
 from tausheet.templates.formulas import LONG
 from tausheet.templates.model import (
     COUNT,
@@ -213,6 +213,7 @@ def differences(here: Filled, there: Filled) -> list[tuple[str, str, Any, Any]]:
     """Cells in which two engines differ; numbers may by 1e-12 of their size, errors in kind.
 
     A point of a curve may by 1e-12 of the curve's largest: near zero a last bit of its time shows.
+    A swing of a worst case may by 1e-12 of the results whose difference it is.
     """
     assert here.values.keys() == there.values.keys()
     found = []
@@ -222,6 +223,9 @@ def differences(here: Filled, there: Filled) -> list[tuple[str, str, Any, Any]]:
             other = there.values[title][cell]
             if isinstance(value, float) and isinstance(other, float):
                 near = 1e-12 * largest.get(cell.rstrip("0123456789"), 0.0)
+                if title.startswith(CORNERS) and re.fullmatch("[GHI]([4-9]|1[01])", cell):
+                    result = values.get(f"D{cell[1:]}")
+                    near = 1e-12 * abs(result) if isinstance(result, float) else 0.0
                 # a tail of exp(-100) and less has lost digits to one rounding of its time
                 same = math.isclose(value, other, rel_tol=1e-12, abs_tol=max(near, 1e-40))
             else:
