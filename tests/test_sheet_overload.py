@@ -46,9 +46,9 @@ def test_demo_agrees_with_hand_calculation(demo: Filled) -> None:
         "t_hot": trip(pickup(1.1, 30), 420, 150, 317),
         "t_cold_max": trip(HIGH, 441, 0, 310),
         "t_hot_min": trip(LOW, 399, 170, 325),
-        "t_run": trip(LOW, 399, 170, 1150),
-        "t_stall": trip(HIGH, 441, 0, 1010),
-        "t_stall_hot": trip(HIGH, 441, 198, 1010),
+        "t_run": trip(LOW, 399, 170, 1045),
+        "t_stall": trip(HIGH, 441, 0, 920),
+        "t_stall_hot": trip(HIGH, 441, 198, 920),
         "T_pick": 45 + 80 * (pickup(1.155, 45) / 198) ** 2,
     }
     for name, value in expected.items():
@@ -77,7 +77,7 @@ def test_heat_reaches_the_trip_when_the_sheet_says(demo: Filled) -> None:
     # cool from the trip, then start: the start just reaches the trip again
     cooled = heat(1680, 0.0, limit, demo["t_restart"])
     assert cooled / limit == pytest.approx(demo["q_ok"], rel=1e-8)
-    assert heat(420, 1090.0**2, cooled, 2.5) == pytest.approx(limit, rel=1e-8)
+    assert heat(420, 990.0**2, cooled, 2.5) == pytest.approx(limit, rel=1e-8)
 
 
 @pytest.mark.parametrize(
@@ -145,10 +145,10 @@ def test_against_the_trip_classes_of_iec_60947_4_1(
 FAILING: dict[str, dict[str, Any]] = {
     "trip": {"value_of_t_most": 7.9},
     "duty": {"value_of_t_duty": 69},
-    "start": {"value_of_t_start": 3.8},
-    "lock_cold": {"value_of_t_lock_cold": 28},
-    "lock_hot": {"value_of_t_lock_hot": 11},
-    "restart": {"value_of_t_wait": 7},
+    "start": {"value_of_t_start": 4.6},
+    "lock_cold": {"value_of_t_lock_cold": 34},
+    "lock_hot": {"value_of_t_lock_hot": 13},
+    "restart": {"value_of_t_wait": 5.5},
     "winding": {"value_of_T_limit": 146, "value_of_corrected": "no"},
     "rated": {"value_of_I_rated": 203},
 }
@@ -189,7 +189,7 @@ def test_earlier_load_not_in_equilibrium(demo: Filled) -> None:
 
 
 def test_locked_rotor_at_low_voltage_takes_longest(demo: Filled) -> None:
-    assert demo.put(lowest_of_I_start=900)["check_lock_cold"] == "FAIL"
+    assert demo.put(lowest_of_I_start=800)["check_lock_cold"] == "FAIL"
 
 
 def test_ambient_not_corrected(demo: Filled) -> None:
@@ -204,7 +204,7 @@ def test_ambient_not_corrected(demo: Filled) -> None:
     ("name", "cells"),
     [
         ("set_above_rated", {"value_of_I_set": 200}),
-        ("hot_start_has_little_room", {"value_of_t_start": 3.2}),
+        ("hot_start_has_little_room", {"value_of_t_start": 4}),
     ],
 )
 def test_named_warnings(demo: Filled, name: str, cells: dict[str, Any]) -> None:
@@ -221,8 +221,27 @@ def test_overload_that_never_trips_fails(demo: Filled) -> None:
     assert "never trips" in str(list(demo.values["Calc sheet"].values()))
 
 
+def test_earlier_load_above_an_overload_that_never_trips(demo: Filled) -> None:
+    """Both differences of squares are negative, their ratio is not: still no trip time."""
+    demo.put(
+        value_of_I_act=180, lowest_of_I_act=180, highest_of_I_act=180,
+        value_of_I_prior=190, highest_of_I_prior=190,
+    )  # fmt: skip
+    assert isinstance(demo["t_hot"], ErrorKind)
+    assert isinstance(demo["t_hot_hand"], ErrorKind)
+    assert demo["check_duty"] == demo["check_trip"] == "FAIL"
+
+
+def test_start_below_the_pickup_needs_no_pause(demo: Filled) -> None:
+    demo.put(value_of_I_set=5000)
+    assert demo["t_restart"] == demo["t_restart_hand"] == 0
+    assert demo["verdict"] == "FAIL"
+
+
 def test_start_that_not_even_a_cold_motor_survives_fails(demo: Filled) -> None:
-    demo.put(value_of_t_start=19)
+    demo.put(
+        value_of_t_start=20, value_of_t_lock_hot=30, value_of_I_start=1150, highest_of_I_start=1200
+    )
     assert demo["q_ok"] < 0
     assert isinstance(demo["t_restart"], ErrorKind)
     assert demo["check_restart"] == demo["verdict"] == "FAIL"
@@ -239,7 +258,7 @@ def test_load_above_pickup_has_tripped_already(demo: Filled) -> None:
     [
         ({"lowest_of_I_start": 290}, "I_start"),
         ({"value_of_t_start": 21}, "t_start"),
-        ({"value_of_t_lock_hot": 36}, "t_lock_hot"),
+        ({"value_of_t_lock_hot": 41}, "t_lock_hot"),
         ({"value_of_T_ref": 75, "value_of_T_limit": 80}, "T_ref"),
     ],
 )
