@@ -5,6 +5,7 @@ from __future__ import annotations
 from tausheet.templates.model import Sheet
 from tausheet.templates.sheets import (
     bleed,
+    coil,
     delay,
     fault,
     field_discharge,
@@ -25,6 +26,7 @@ SHEETS: dict[str, Sheet] = {
         bleed.SHEET,
         precharge.SHEET,
         delay.SHEET,
+        coil.SHEET,
         filter.SHEET,
         sampling.SHEET,
         ripple.SHEET,
