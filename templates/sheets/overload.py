@@ -608,7 +608,10 @@ CURVE = Curve(
     ),
     levels=(Level("trip", "1"),),
     moments=(Moment("must have tripped", "t_most"), Moment("must not have tripped", "t_duty")),
-    marks=(Mark("latest trip", "t_cold_max", "1"), Mark("earliest trip", "t_hot_min", "1")),
+    marks=(
+        Mark("latest trip", "t_cold_max", "IF(ISNUMBER(t_cold_max),1,NA())"),
+        Mark("earliest trip", "t_hot_min", "IF(ISNUMBER(t_hot_min),1,NA())"),
+    ),
     points=160,
 )
 
