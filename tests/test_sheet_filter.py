@@ -237,3 +237,12 @@ def test_slips_are_refused(demo: Filled) -> None:
     assert demo["remark_on_V_dn"].startswith("V_dn is above V_up")
     demo.put(value_of_bounce_old_2=None)
     assert demo["verdict"] == "FAIL"
+
+
+def test_blank_pattern_gives_no_time(demo: Filled) -> None:
+    blank = {
+        f"value_of_bounce_{kind}_{row}": None for row in range(1, 5) for kind in ("new", "old")
+    }
+    demo.put(**blank)
+    assert isinstance(demo["t_bounce"], ErrorKind)
+    assert demo["verdict"] == "FAIL"

@@ -459,7 +459,7 @@ SWITCHING = Block(
         Quantity(
             "t_bounce",
             "time from the first touch until the contact rests",
-            "SUM(bounce_new)+SUM(bounce_old)",
+            "IF(bounce_count>0,SUM(bounce_new)+SUM(bounce_old),NA())",
             "time",
             "the sum of the table in part 4",
         ),
