@@ -215,7 +215,9 @@ def demo(
 
     sheets = make_demo(folder, force=force)
     console.print("Quay 4, harbour crane, drive retrofit: the calc sheets of the demo job\n")
-    _print_made(sheets)
+    for sheet in sheets:
+        console.print(f"{sheet.verdict}  {sheet.title}: {sheet.path}", style="bold")
+        console.print(f"      {escape(sheet.decided_by)}")
 
 
 def _print_made(made: Iterable[Made]) -> None:

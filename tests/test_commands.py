@@ -191,7 +191,7 @@ def test_the_demo_makes_every_sheet_and_prints_its_verdict(tmp_path: Path) -> No
     done = tausheet("demo", tmp_path / "quay")
     assert done.returncode == 0, done.stderr
     assert "Quay 4" in done.stdout
-    assert done.stdout.count("verdict: PASS") == len(SHEETS)
+    assert done.stdout.count("PASS  ") == len(SHEETS)
     assert len(list((tmp_path / "quay").iterdir())) == len(SHEETS)
     assert tausheet("demo", tmp_path / "quay").returncode == 2
 
