@@ -16,7 +16,7 @@ from openpyxl.formula.tokenizer import Token
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import TausheetError
 from tausheet.functions.units import units_of
-from tausheet.templates.model import COUNT, UNITLESS, Formed, Input, Sheet, Tolerance
+from tausheet.templates.model import COUNT, UNITLESS, Formed, Input, NumberColumn, Sheet, Tolerance
 
 BUILT_INS = frozenset(
     """
@@ -255,6 +255,11 @@ def _check_filled_in(sheet: Sheet) -> None:
             options = getattr(column, "options", ())
             if len(",".join(options)) > 255 or any("," in option for option in options):
                 raise SheetError(f"{where} offers words that no drop-down list can hold")
+        if table.rows > LONG and not all(
+            isinstance(column, NumberColumn) and column.needed and column.quantity != COUNT
+            for column in table.columns
+        ):
+            raise SheetError(f"{where} is long, so that it can hold columns of quantities alone")
         for rule in table.rules if table.rows > LONG else ():
             if wrong := functions_in(rule.holds) - ELEMENTWISE:
                 raise SheetError(

@@ -95,6 +95,8 @@ class Rows:
         )
         last, first = f"${self.used}${OVER}", f"${self.state}${OVER}"
         sheet[f"{self.used}{OVER}"] = f"=SUMPRODUCT(MAX({used}*{index}))"
+        if self.long:
+            self._whole_at_once(index)
         # the number of the first row at fault, 0 for none
         beyond = self.table.rows + 1
         sheet[f"{self.state}{OVER}"] = (
@@ -111,6 +113,36 @@ class Rows:
             book.define(f"{symbol}_{name}", sheet, f"{letter}{TOP}", f"{letter}{self.bottom}")
         ends = list(self.echo.values())
         book.define(symbol, sheet, f"{ends[0]}{TOP}", f"{ends[-1]}{self.bottom}")
+
+    def _whole_at_once(self, index: str) -> None:
+        """For a long table: its last row, and whether all is well, by a few sums of columns.
+
+        Only where something is wrong is every cell looked at, which takes much longer.
+        """
+        place = next(self._places())
+        filled = [f"SUMPRODUCT(MAX((1-ISBLANK({cell}))*{index}))" for cell in place.typed.values()]
+        last = f"${self.used}${OVER}"
+        self.sheet[f"{self.used}{OVER}"] = f"=MAX({','.join(filled)})"
+        wrong = []
+        for column in self.table.columns:
+            cell = place.typed[column.name]
+            assert isinstance(column, NumberColumn)
+            letter = self.echo[column.name]
+            scale = f"*${letter}${OVER}/${letter}${UNDER}"
+            wrong += [
+                f"COUNTA({cell})<>{last}",
+                f"COUNT({cell})<>{last}",
+                f"MIN({cell}){scale}<{column.low!r}",
+                f"MAX({cell}){scale}>{column.high!r}",
+            ]
+        for rule in self.table.rules:
+            broken = self._rule(rule.holds, place)
+            wrong.append(f"SUMPRODUCT(({place.index}<={last})*{broken})>0")
+        self.sheet[f"{self.used}{UNDER}"] = f"=IFERROR(IF(OR({','.join(wrong)}),0,1),0)"
+
+    def _unless_well(self, well: str, looked_at: str) -> str:
+        """What a column shows while the whole long table is well, and else."""
+        return f"IF(${self.used}${UNDER}=1,{well},{looked_at})" if self.long else looked_at
 
     def code(self) -> str:
         """The cell that holds the number of the table's sentence, 0 when all is well."""
@@ -236,7 +268,8 @@ class Rows:
             blank = "1"
             for cell in place.typed.values():
                 blank = f"IF(ISBLANK({cell}),{blank},0)"
-            self._put(self.used, place, f"1-{blank}")
+            filled = self._unless_well(f"IF({place.index}<={last},1,0)", f"1-{blank}")
+            self._put(self.used, place, filled)
             faults = []
             for column, numbers in zip(self.table.columns, codes, strict=True):
                 conditions = self._faults_of(
@@ -251,12 +284,11 @@ class Rows:
             state = "0"
             for condition, number in reversed(faults):
                 state = f"IF({condition},{number},{state})"
-            self._put(
-                self.state,
-                place,
+            judged = (
                 f"IF({place.used}=0,IF({place.index}<{last},{gap},0),"
-                f"IFERROR({state},{self.cannot}))",
+                f"IFERROR({state},{self.cannot}))"
             )
+            self._put(self.state, place, self._unless_well("0", judged))
 
     def _converted(self, column: EntryColumn, cells: dict[str, str]) -> str:
         cell = cells[column.name]
@@ -314,11 +346,9 @@ class Rows:
             for place in self._places():
                 cell = place.typed[column.name]
                 value = self._converted(column, place.typed)
-                self._put(
-                    self.echo[column.name],
-                    place,
-                    f'IF({place.state}>0,NA(),IF(ISBLANK({cell}),"",{value}))',
-                )
+                judged = f'IF({place.state}>0,NA(),IF(ISBLANK({cell}),"",{value}))'
+                well = f'IF({place.index}<=${self.used}${OVER},{value},"")'
+                self._put(self.echo[column.name], place, self._unless_well(well, judged))
 
 
 def has_unit(column: EntryColumn) -> bool:

@@ -299,6 +299,7 @@ def test_list_shows_the_columns(monkeypatch: pytest.MonkeyPatch) -> None:
             "t_closed offers a unit that does not fit",
         ),
         (replace(BOUNCE, symbol="R"), "R reads as a cell"),
+        (replace(BOUNCE, symbol="m_x", rows=200), "can hold columns of quantities alone"),
     ],
 )  # fmt: skip
 def test_a_slip_in_a_table_stops_the_build(table: EntryTable, sentence: str) -> None:

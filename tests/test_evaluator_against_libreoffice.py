@@ -200,6 +200,11 @@ def test_array_formulas_agree_with_libreoffice(tmp_path: Path) -> None:
             ("1:3", '=Z6:Z7&"x"'),
             ("1:4", "=IFERROR(1/Z6:Z9,0)"),
             ("1:2", "=SUM(Z6:Z9*2)"),
+            ("1:4", "=IF(Z6=2,0,Z6:Z9*2)"),
+            ("1:4", "=IF(Z6<>0,Z6:Z9,0)"),
+            ("1:4", '=IF(Z6<>0,IF(Z6:Z9>0,Z6:Z9&"",0),1/0)'),
+            ("1:4", "=IF(Z6:Z9>0,IF(Z6<>0,Z6:Z9*2,1),-1)"),
+            ("1:3", "=IF(1/0,Z6:Z8,1)"),
         ],
         start=1,
     ):

@@ -19,7 +19,7 @@ from tausheet.addin import package
 from tausheet.addin.cells import CellValue
 from tausheet.addin.embedded.parser import MOST_CELLS, Area, Formula, Node, Unknown, size
 from tausheet.addin.embedded.refused import Refused
-from tausheet.addin.embedded.values import NotHere, PassedOn, Value, top_left
+from tausheet.addin.embedded.values import Grid, NotHere, PassedOn, Value, top_left
 from tausheet.functions.errors import ErrorKind
 
 Key = tuple[str, int, int]
@@ -61,6 +61,7 @@ class Book:
             raise Refused("the workbook", "its formulas refer to more cells than this engine reads")
         self._order = list(self._in_order())
         self._stale: set[Key] = set(self._formulas)
+        self._read_before: dict[Area, Grid] = {}
 
     @classmethod
     def load(cls, path: Path) -> Book:
@@ -89,6 +90,7 @@ class Book:
 
     def values(self) -> Values:
         """Compute what the cells entered change; the value of every formula cell."""
+        self._read_before.clear()
         for key in self._order:
             if key in self._stale:
                 self._compute(key)
@@ -103,6 +105,16 @@ class Book:
     def value(self, sheet: str, row: int, column: int) -> CellValue:
         """Value of a cell, computed before."""
         return self._cells.get((sheet, row, column))
+
+    def read_once(self, area: Area) -> Grid:
+        """The values of a range; nothing in it changes once a formula has read it."""
+        found = self._read_before.get(area)
+        if found is None:
+            sheet, left, top, right, bottom = area
+            columns, value = range(left, right + 1), self._cells.get
+            found = [[value((sheet, r, c)) for c in columns] for r in range(top, bottom + 1)]
+            self._read_before[area] = found
+        return found
 
     def named(self, sheet: str, name: str) -> str | None:
         """What a defined name stands for on a sheet."""

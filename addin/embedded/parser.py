@@ -217,9 +217,11 @@ class Formula:
     def _referring(self, area: Area) -> Node:
         self.areas.append(area)
         sheet, left, top, right, bottom = area
-        value = self._book.value
+        value, book = self._book.value, self._book
         if size(area) == 1:
             return Node(lambda: value(sheet, top, left), False, area)
+        if size(area) > MANY:
+            return Node(lambda: book.read_once(area), True, area)
         rows, columns = range(top, bottom + 1), range(left, right + 1)
         return Node(lambda: [[value(sheet, r, c) for c in columns] for r in rows], True, area)
 
@@ -289,9 +291,9 @@ class Formula:
         otherwise = arguments[2] if len(arguments) == 3 else Node(lambda: False)
         nodes = [arguments[0], arguments[1] or blank, otherwise or blank]
         runs = [self._for_elements(node, array) for node in nodes]
-        if array:
-            return Node(lambda: _chosen_elements(*(run() for run in runs)), True)
         condition, then, els = runs
+        if array:
+            return Node(lambda: _chosen_of_arrays(condition(), then, els), True)
 
         def run() -> Value:
             decided = truth(condition())
@@ -347,6 +349,9 @@ _LAZY = {
     "CHOOSE": Formula._choose,
     "ROW": Formula._row_of,
 }
+
+MANY = 500
+"""Cells of a range from which on it is kept while a workbook is computed."""
 
 _ARRAY_ROW = "ARRAYROW"
 _QUOTED = re.compile(r"\"[^\"]*\"|'[^']*'")
@@ -446,6 +451,18 @@ def _chosen(condition: Scalar, then: Scalar, otherwise: Scalar) -> Scalar:
     if isinstance(decided, ErrorKind):
         return decided
     return then if decided else otherwise
+
+
+def _chosen_of_arrays(condition: Value, then: Run, otherwise: Run) -> Value:
+    """Element by element; a single condition takes one branch whole, and the other is left."""
+    if type(condition) is list:
+        return _chosen_elements(condition, then(), otherwise())
+    if isinstance(condition, str):
+        raise NotHere("IF with a text as a condition in an array")
+    decided = truth(condition)
+    if isinstance(decided, ErrorKind):
+        return decided
+    return then() if decided else otherwise()
 
 
 def _chosen_elements(condition: Value, then: Value, otherwise: Value) -> Value:
