@@ -272,5 +272,6 @@ class _Own(_Writing):
         self._name_cells(typed)
         self._validate(typed, rows)
         self._remark(rows, row)
-        sheet["A2"] = f"=remark_on_{table.symbol}"
-        sheet["A2"].font = style.font(9, colour=style.QUIET)
+        beside = sheet[f"{chr(66 + len(table.columns))}{OWN_TOP - 2}"]
+        beside.value = f"=remark_on_{table.symbol}"
+        beside.font = style.font(10, colour=style.QUIET)

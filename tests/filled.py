@@ -114,9 +114,14 @@ class Filled:
 
 
 def short(sheet: Sheet) -> Sheet:
-    """The sheet with fewer draws and points of the curve, to be computed some hundred times."""
+    """The sheet with fewer draws, points and rows, to be computed some hundred times."""
+    tables = [
+        replace(table, rows=max(len(table.demo), LONG) + 20) if table.rows > LONG else table
+        for table in sheet.filled_in
+    ]
     return replace(
         sheet,
+        filled_in=tuple(tables),
         worst_cases=tuple(replace(worst, draws=8) for worst in sheet.worst_cases),
         curve=replace(sheet.curve, points=24),
     )

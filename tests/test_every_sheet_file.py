@@ -14,6 +14,7 @@ import pytest
 import workbooks
 from filled import Filled, bad_values
 from openpyxl import Workbook, load_workbook
+from openpyxl.worksheet.formula import ArrayFormula
 from PIL import Image
 from printed import PAPERS, assert_no_text_is_cut, pages_of, plain, shown
 
@@ -220,11 +221,16 @@ def test_formulas_are_plain(made: Any, name: str) -> None:
     allowed = formulas.BUILT_INS | CATALOGUE.keys()
     for _, cell in every_cell(book):
         if cell.data_type == "f":
-            assert isinstance(cell.value, str), cell.coordinate  # no array formula
-            assert workbooks.functions(cell.value) <= allowed, cell.coordinate
-            assert len(cell.value) < 8000
+            text = cell.value
+            if isinstance(text, ArrayFormula):  # a long table has a formula a column, none of ours
+                assert cell.parent.title == "Rows"
+                assert "FO_" not in text.text
+                text = text.text
+            assert isinstance(text, str), cell.coordinate
+            assert workbooks.functions(text) <= allowed, cell.coordinate
+            assert len(text) < 8000
             # Excel takes no longer text in a formula
-            assert all(len(t) < 256 for t in re.findall('"((?:[^"]|"")*)"', cell.value))
+            assert all(len(t) < 256 for t in re.findall('"((?:[^"]|"")*)"', text))
     for rules in book["Calc sheet"].conditional_formatting:
         for rule in rules.rules:
             assert "FO_" not in "".join(rule.formula)

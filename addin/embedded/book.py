@@ -17,7 +17,7 @@ from openpyxl.worksheet.formula import ArrayFormula
 
 from tausheet.addin import package
 from tausheet.addin.cells import CellValue
-from tausheet.addin.embedded.parser import MOST_CELLS, Area, Formula, Node, Unknown, size
+from tausheet.addin.embedded.parser import MANY, MOST_CELLS, Area, Formula, Node, Unknown, size
 from tausheet.addin.embedded.refused import Refused
 from tausheet.addin.embedded.values import Grid, NotHere, PassedOn, Value, top_left
 from tausheet.functions.errors import ErrorKind
@@ -25,7 +25,8 @@ from tausheet.functions.errors import ErrorKind
 Key = tuple[str, int, int]
 """Sheet, row, column."""
 
-Users = dict[Key, set[Key]]
+Keys = set[Key]
+Users = dict[Key, Keys]
 
 Values = dict[str, dict[str, CellValue]]
 
@@ -54,10 +55,13 @@ class Book:
         self._cells: dict[Key, CellValue] = {}
         self._texts: dict[Key, tuple[str, Area | None]] = {}
         self._filled_by: dict[Key, Key] = {}
+        self._filling: dict[Area, list[Key]] = {}
         for sheet in workbook.worksheets:
             self._read(sheet, workbook.epoch)
         self._formulas = {key: self._compiled(key) for key in self._texts}
-        if sum(size(area) for f in self._formulas.values() for area in f.areas) > MOST_CELLS:
+        areas = [area for formula in self._formulas.values() for area in formula.areas]
+        small = sum(size(area) for area in areas if size(area) <= MANY)
+        if small + sum(size(area) for area in {*areas} if size(area) > MANY) > MOST_CELLS:
             raise Refused("the workbook", "its formulas refer to more cells than this engine reads")
         self._order = list(self._in_order())
         self._stale: set[Key] = set(self._formulas)
@@ -84,7 +88,7 @@ class Book:
             del self._cells[key]
         todo = [key]
         while todo:
-            users = self._users.get(todo.pop(), set()) - self._stale
+            users = self._users_of(todo.pop()) - self._stale
             self._stale |= users
             todo += users
 
@@ -153,15 +157,37 @@ class Book:
                         self._filled_by[other] = key
                         self._cells.pop(other, None)
 
+    def _users_of(self, key: Key) -> Keys:
+        """The formula cells that refer to a cell, or to the block that its formula fills."""
+        users, of_large = self._users
+        found = set(users.get(key, ()))
+        sheet, row, column = key
+        block = self._texts[key][1] if key in self._texts else None
+        _, left, top, right, bottom = block or (sheet, column, row, column, row)
+        for area, others in of_large.items():
+            if (
+                area[0] == sheet
+                and area[1] <= right
+                and left <= area[3]
+                and area[2] <= bottom
+                and top <= area[4]
+            ):
+                found |= others
+        return found
+
     @cached_property
-    def _users(self) -> Users:
-        """For every cell, the formula cells that refer to it; made when a cell first changes."""
+    def _users(self) -> tuple[Users, dict[Area, Keys]]:
+        """The formula cells that refer to a cell, or to a large area; made at the first change."""
         users: Users = {}
+        of_large: dict[Area, Keys] = {}
         for key, formula in self._formulas.items():
             for area in formula.areas:
+                if size(area) > MANY:
+                    of_large.setdefault(area, set()).add(key)
+                    continue
                 for other in _keys(area):
                     users.setdefault(self._filled_by.get(other, other), set()).add(key)
-        return users
+        return users, of_large
 
     def _compiled(self, key: Key) -> Formula:
         text, area = self._texts[key]
@@ -193,10 +219,14 @@ class Book:
 
     def _needed(self, key: Key) -> Iterator[Key]:
         for area in self._formulas[key].areas:
-            for other in _keys(area):
-                origin = self._filled_by.get(other, other)
-                if origin in self._formulas:
-                    yield origin
+            yield from self._origins(area)
+
+    def _origins(self, area: Area) -> Iterable[Key]:
+        """The formula cells that fill an area, each once."""
+        if area not in self._filling:
+            origins = dict.fromkeys(self._filled_by.get(other, other) for other in _keys(area))
+            self._filling[area] = [key for key in origins if key in self._formulas]
+        return self._filling[area]
 
     def _compute(self, key: Key) -> None:
         block = self._texts[key][1]

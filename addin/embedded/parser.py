@@ -19,7 +19,7 @@ from openpyxl.utils import range_boundaries
 from tausheet.addin import cells
 from tausheet.addin.embedded.builtin import BUILTINS, IN_ARRAYS, TELL_CELLS_APART
 from tausheet.addin.embedded.operators import BINARY, BINDING, OF_ELEMENTS, negated, percent, plus
-from tausheet.addin.embedded.values import NotHere, Scalar, Value, each, number, truth
+from tausheet.addin.embedded.values import Grid, NotHere, Scalar, Value, each, number, truth
 from tausheet.addin.embedded.values import cells as cells_of
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import ErrorKind
@@ -48,6 +48,9 @@ class Cells(Protocol):
 
     def value(self, sheet: str, row: int, column: int) -> Scalar:
         """Value of a cell, computed before."""
+
+    def read_once(self, area: Area) -> Grid:
+        """The values of a large range."""
 
     def named(self, sheet: str, name: str) -> str | None:
         """What a defined name stands for, None when there is none."""

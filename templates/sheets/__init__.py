@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from tausheet.templates.model import Sheet
 from tausheet.templates.sheets import (
+    acceptance,
     bleed,
     coil,
     delay,
@@ -35,6 +36,7 @@ SHEETS: dict[str, Sheet] = {
         field_discharge.SHEET,
         overload.SHEET,
         heating.SHEET,
+        acceptance.SHEET,
         network.SHEET,
         sequence.SHEET,
     )
