@@ -6,6 +6,7 @@ A refusal (any TausheetError) is one sentence on the error stream and exit statu
 from __future__ import annotations
 
 import csv
+import gc
 import sys
 from collections.abc import Iterable
 from enum import Enum
@@ -262,6 +263,8 @@ def _read_values(path: Path) -> dict[str, str]:
 
 def main() -> None:
     """Run a command; a refusal is one sentence and exit status 2."""
+    # thousands of cells live until the end, and to look through them again and again takes long
+    gc.set_threshold(100_000, 50, 50)
     try:
         app()
     except TausheetError as error:

@@ -210,7 +210,7 @@ def check(sheet: Sheet) -> None:
                 f"{sheet.name}: the second way of {quantity.symbol} depends on a function of ours "
                 f"({', '.join(sorted(tainted))}); it must do without"
             )
-    _check_worst_cases(sheet)
+    _check_worst_cases(sheet, graph)
     _check_filled_in(sheet)
 
 
@@ -321,8 +321,7 @@ def symbols_in_braces(sentence: str) -> list[str]:
     return re.findall(r"{(\w+)}", sentence)
 
 
-def _check_worst_cases(sheet: Sheet) -> None:
-    graph = dependencies(sheet)
+def _check_worst_cases(sheet: Sheet, graph: Mapping[str, set[str]]) -> None:
     quantities = {q.symbol for q in sheet.quantities()}
     toleranced = {
         e.symbol
