@@ -14,7 +14,6 @@ import time
 import zipfile
 from decimal import Decimal
 from pathlib import Path
-from types import SimpleNamespace
 from typing import Any
 
 import pytest
@@ -23,7 +22,7 @@ from oletools.olevba import VBA_Parser
 
 from tausheet.addin import cells
 from tausheet.addin.excel import addin_file, bridge, installation, names, registration, wrappers
-from tausheet.addin.excel.refresh import refresh_app, relinked
+from tausheet.addin.excel.refresh import relinked
 from tausheet.functions.catalogue import CATALOGUE
 from tausheet.functions.errors import ErrorKind, TausheetError
 
@@ -365,31 +364,3 @@ def test_a_file_that_is_no_add_in_is_said_to_be_none(content: bytes, tmp_path: P
 )
 def test_our_functions_are_entered_by_their_plain_names(found: str, entered: str) -> None:
     assert relinked(found) == entered
-
-
-class Cell:
-    def __init__(self, formula: str, array: Any = None) -> None:
-        self.HasFormula = formula.startswith("=")
-        self.Formula = self.Formula2 = formula
-        self.HasArray, self.CurrentArray = array is not None, array
-        self.api = self
-
-
-def test_refresh_enters_each_formula_once_and_computes_everything() -> None:
-    array = SimpleNamespace(Address="$B$1:$B$2", FormulaArray=None)
-    cells_of_the_sheet = [
-        Cell("=[1]!FO_STEP(1,1,0,5)"),
-        Cell("=SUM(A1:A2)"),
-        Cell("5"),
-        Cell("=_xludf.FO_STEP(A1:A2,1,0,5)", array),
-        Cell("=_xludf.FO_STEP(A1:A2,1,0,5)", array),
-    ]
-    rebuilt = []
-    api = SimpleNamespace(Calculation=-4105, CalculateFullRebuild=lambda: rebuilt.append(True))
-    sheet = SimpleNamespace(name="S", used_range=cells_of_the_sheet)
-    app = SimpleNamespace(api=api, books=[SimpleNamespace(sheets=[sheet])])
-    assert refresh_app(app) == 2
-    assert cells_of_the_sheet[0].Formula2 == "=FO_STEP(1,1,0,5)"
-    assert cells_of_the_sheet[1].Formula2 == "=SUM(A1:A2)"
-    assert array.FormulaArray == "=FO_STEP(A1:A2,1,0,5)"
-    assert (api.Calculation, rebuilt) == (-4105, [True])

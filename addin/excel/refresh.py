@@ -31,25 +31,71 @@ def refresh() -> str:
         raise NotInstalled(NOT_WINDOWS)
     import xlwings
 
-    entered = sum(refresh_app(app) for app in xlwings.apps)
-    return f"Excel: {entered} formulas entered again and everything computed."
+    found = [refresh_app(app) for app in xlwings.apps]
+    if not found:
+        return "Excel: not open; open the workbooks first."
+    return "\n".join(
+        [
+            f"Excel: {sum(count for count, _ in found)} formulas entered again and everything "
+            "computed.",
+            *(f"Excel: {sentence}" for _, left in found for sentence in left),
+        ]
+    )
 
 
-def refresh_app(app: Any) -> int:
-    """The same in one running Excel; returns how many formulas were entered."""
+def refresh_app(app: Any) -> tuple[int, list[str]]:
+    """The same in one running Excel: how many formulas were entered, and sheets that were not."""
+    if not len(app.books):  # Excel then knows no way of calculating
+        return 0, []
     before = app.api.Calculation
     app.api.Calculation = _MANUAL
+    entered, left = 0, []
     try:
-        entered = sum(
-            _entered(cell)
-            for book in app.books
-            for sheet in book.sheets
-            for cell in _heads(sheet.used_range)
-        )
+        for book in app.books:
+            for sheet in book.sheets:
+                # a sheet that refuses (a password, a shared workbook) must not stop the others
+                try:
+                    entered += _refresh_sheet(sheet)
+                except Exception as error:
+                    left.append(
+                        f"{book.name}, sheet {sheet.name}: not all formulas could be entered "
+                        f"({error}); unprotect the sheet and run `tausheet refresh` again"
+                    )
     finally:
         app.api.Calculation = before
     app.api.CalculateFullRebuild()
-    return entered
+    return entered, left
+
+
+def _refresh_sheet(sheet: Any) -> int:
+    heads = list(_heads(sheet.used_range))
+    if heads and sheet.api.ProtectContents:
+        _let_us_in(sheet.api)
+    for api in heads:
+        _enter(api)
+    return len(heads)
+
+
+_ALLOWED = (
+    *("AllowFormattingCells", "AllowFormattingColumns", "AllowFormattingRows"),
+    *("AllowInsertingColumns", "AllowInsertingRows", "AllowInsertingHyperlinks"),
+    *("AllowDeletingColumns", "AllowDeletingRows"),
+    *("AllowSorting", "AllowFiltering", "AllowUsingPivotTables"),
+)
+
+
+def _let_us_in(sheet: Any) -> None:
+    """Keep the sheet protected for its user as it is, but let this program enter formulas.
+
+    Lasts until the workbook is closed and is not stored in it. A password makes Excel refuse.
+    """
+    sheet.Protect(
+        DrawingObjects=sheet.ProtectDrawingObjects,
+        Contents=True,
+        Scenarios=sheet.ProtectScenarios,
+        UserInterfaceOnly=True,
+        **{name: getattr(sheet.Protection, name) for name in _ALLOWED},
+    )
 
 
 def _heads(cells: Iterable[Any]) -> Iterable[Any]:
@@ -66,9 +112,10 @@ def _heads(cells: Iterable[Any]) -> Iterable[Any]:
         yield api
 
 
-def _entered(api: Any) -> int:
+def _enter(api: Any) -> None:
     if api.HasArray:
         api.CurrentArray.FormulaArray = relinked(api.Formula)
-    else:
+    elif hasattr(api, "Formula2"):  # with plain Formula, newer versions put @ before our functions
         api.Formula2 = relinked(api.Formula2)
-    return 1
+    else:
+        api.Formula = relinked(api.Formula)
