@@ -37,12 +37,16 @@ def replacing(path: Path, *, force: bool) -> Iterator[Path]:
     temporary = Path(name)
     try:
         yield temporary
+        refuse_existing(path, force=force)
         _like(temporary, target)
         _on_the_disk(temporary)
-        if not force:
-            refuse_existing(path, force=False)
-        os.replace(temporary, target)
+        if force:
+            os.replace(temporary, target)
+        else:
+            _put_where_nothing_is(temporary, target)
         _on_the_disk(target.parent)
+    except FileExistsError:
+        raise _taken(path) from None
     except OSError as error:
         raise NotWritten(f"{path} was not written: {error.strerror or error}") from None
     finally:
@@ -51,11 +55,33 @@ def replacing(path: Path, *, force: bool) -> Iterator[Path]:
 
 
 def refuse_existing(path: Path, *, force: bool) -> None:
-    """Refuse a path that is taken, unless it may be overwritten; a folder always."""
+    """Refuse a path that is taken, unless it may be overwritten; what is protected always."""
     if path.is_dir():
         raise NotWritten(f"{path} is a folder; give the name of a file")
     if not force and os.path.lexists(path):
-        raise NotWritten(f"{path} exists; choose another name, or give --force to overwrite it")
+        raise _taken(path)
+    # the folder alone decides whether a file can be replaced, so this asks the file itself;
+    # the owner's bits too, since an administrator may write whatever they say
+    if path.exists() and not (os.access(path, os.W_OK) and path.stat().st_mode & stat.S_IWUSR):
+        raise NotWritten(f"{path} is read-only; make it writable first, or choose another name")
+
+
+def _taken(path: Path) -> NotWritten:
+    return NotWritten(f"{path} exists; choose another name, or give --force to overwrite it")
+
+
+def _put_where_nothing_is(temporary: Path, target: Path) -> None:
+    """Rename, but never over a file that came into being meanwhile: FileExistsError."""
+    if os.name == "nt":  # there renaming never replaces
+        os.rename(temporary, target)
+        return
+    try:
+        os.link(temporary, target)
+    except FileExistsError:
+        raise
+    except OSError:  # a file system without links: the name is taken first, with an empty file
+        os.close(os.open(target, os.O_CREAT | os.O_EXCL | os.O_WRONLY))
+        os.replace(temporary, target)
 
 
 def _like(temporary: Path, target: Path) -> None:

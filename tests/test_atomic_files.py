@@ -76,6 +76,73 @@ def test_a_file_that_appears_meanwhile_stays(tmp_path: Path) -> None:
     assert os.listdir(tmp_path) == ["sheet.xlsx"]
 
 
+def raced(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch, call: str, refused: bool
+) -> tuple[Path, Path]:
+    """A file appears at the last moment, just before the call that puts ours into place."""
+    target = tmp_path / "sheet.xlsx"
+    real = getattr(os, call)
+
+    def late(*arguments: object, **named: object) -> object:
+        if os.fspath(target) in map(str, arguments):
+            target.write_bytes(OLD)
+        return real(*arguments, **named)
+
+    def no_links(*_: object) -> None:
+        raise PermissionError(1, "Operation not permitted")
+
+    monkeypatch.setattr(os, "link", no_links if refused else os.link)
+    monkeypatch.setattr(os, call, late)
+    return target, tmp_path
+
+
+@pytest.mark.parametrize(("call", "refused"), [("link", False), ("open", True)])
+def test_a_file_that_appears_at_the_last_moment_stays(
+    call: str, refused: bool, tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    target, folder = raced(tmp_path, monkeypatch, call, refused)
+    with (
+        pytest.raises(NotWritten, match="exists; choose another name"),
+        replacing(target, force=False) as temporary,
+    ):
+        temporary.write_bytes(NEW)
+    assert target.read_bytes() == OLD
+    assert os.listdir(folder) == ["sheet.xlsx"]
+
+
+def test_a_file_system_without_links_will_do(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    def no_links(*_: object) -> None:
+        raise PermissionError(1, "Operation not permitted")
+
+    monkeypatch.setattr(os, "link", no_links)
+    with replacing(tmp_path / "sheet.xlsx", force=False) as temporary:
+        temporary.write_bytes(NEW)
+    assert (tmp_path / "sheet.xlsx").read_bytes() == NEW
+    assert os.listdir(tmp_path) == ["sheet.xlsx"]
+
+
+def test_a_read_only_file_is_not_replaced_even_with_force(tmp_path: Path) -> None:
+    target = tmp_path / "sheet.xlsx"
+    target.write_bytes(OLD)
+    target.chmod(0o444)
+    with (
+        pytest.raises(NotWritten, match="is read-only; make it writable first"),
+        replacing(target, force=True),
+    ):
+        raise AssertionError("the block must not run")
+    target.chmod(0o644)
+    with (
+        pytest.raises(NotWritten, match="is read-only"),
+        replacing(target, force=True) as temporary,
+    ):
+        temporary.write_bytes(NEW)
+        target.chmod(0o444)
+    assert target.read_bytes() == OLD
+    assert os.listdir(tmp_path) == ["sheet.xlsx"]
+
+
 def test_a_failure_inside_leaves_the_old_file_and_no_rubbish(tmp_path: Path) -> None:
     target = tmp_path / "sheet.xlsx"
     target.write_bytes(OLD)
