@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import math
 import random
+import re
 from typing import Any
 
 import pytest
@@ -232,3 +233,39 @@ def test_slips_are_refused(demo: Filled) -> None:
     assert demo["remark_on_V_off"].startswith("V_off is above the lowest V_th")
     demo.put(value_of_t_most=35)
     assert demo["remark_on_t_most"].startswith("t_most leaves no room")
+
+
+def test_lowest_final_value_where_the_input_gives_current_and_the_capacitor_leaks(
+    demo: Filled,
+) -> None:
+    """Kirchhoff at rest: (V - u) / R = u leak / 50 V + I, for the lowest and highest resistor."""
+    demo.put(
+        value_of_I_in=-10, lowest_of_I_in=-12, highest_of_I_in=-8, value_of_I_leak=20,
+        highest_of_I_leak=40, unit_of_I_leak="uA",
+    )  # fmt: skip
+    levels = [(4.75 / r + 8e-6) / (1 / r + 40e-6 / 50) for r in (0.98e5, 1.02e5)]
+    assert demo["V_least"] == pytest.approx(min(levels), rel=1e-12)
+    demo.put(
+        value_of_I_in=-60, lowest_of_I_in=-70, highest_of_I_in=-50, value_of_I_leak=1,
+        highest_of_I_leak=2, unit_of_I_leak="uA",
+    )  # fmt: skip
+    levels = [(4.75 / r + 50e-6) / (1 / r + 2e-6 / 50) for r in (0.98e5, 1.02e5)]
+    assert levels[0] < levels[1]
+    assert demo["V_least"] == pytest.approx(levels[0], rel=1e-12)
+
+
+def test_curve_follows_the_circuit(demo: Filled) -> None:
+    """Both lines against the closed form of a ramp's response, after the rise."""
+    demo.put()
+    curve = demo.values["Curve"]
+    slow_final = 1 / (1 + 1.02e5 * 5e-8 / 50)
+    lines = (
+        ("C", 1.02e5 * 1.12e-6 * slow_final, (4.75 - 0.102) * slow_final),
+        ("D", 0.98e5 * 0.88e-6, 5.25 + 0.098),
+    )
+    later = [cell for cell in curve if re.fullmatch(r"A\d+", cell) and curve[cell] > 0.03]
+    assert max(curve[cell] for cell in later) > 0.24
+    for cell in later:
+        for column, tau, final in lines:
+            behind = tau / 0.03 * (math.exp(0.03 / tau) - 1) * math.exp(-curve[cell] / tau)
+            assert curve[f"{column}{cell[1:]}"] == pytest.approx(final * (1 - behind), rel=1e-9)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import itertools
 import math
 import random
+import re
 from typing import Any
 
 import pytest
@@ -246,3 +247,43 @@ def test_blank_pattern_gives_no_time(demo: Filled) -> None:
     demo.put(**blank)
     assert isinstance(demo["t_bounce"], ErrorKind)
     assert demo["verdict"] == "FAIL"
+
+
+@pytest.mark.parametrize("hertz", [1e-4, 0.01, 0.1, 0.11, 0.12, 1.0])
+def test_small_attenuation_both_ways(demo: Filled, hertz: float) -> None:
+    """10 log10(1 + x) for small x by log1p; the second way changes over to a series there."""
+    demo.put(value_of_f_sig=hertz)
+    slow = 1.12 * 470e-9 / (1 / (1.02 * 22e3 + 1.05 * 4.7e3) + 1 / 102e3)
+    loss = 10 / math.log(10) * math.log1p((2 * math.pi * hertz * slow) ** 2)
+    assert demo["a_sig"] == pytest.approx(loss, rel=1e-12)
+    assert demo["a_sig_hand"] == pytest.approx(loss, rel=1e-11)
+
+
+def test_opening_with_the_current_against_it(demo: Filled) -> None:
+    """From the level with the current one way to that with it the other way: tau ln(...)."""
+    demo.put(value_of_I_in=100)
+    x = {"R_flt": 22e3, "C_flt": 470e-9, "R_load": 100e3, "V_on": 24.0, "R_off": 4700.0}
+    start, end = rest(x | {"I_in": -1e-4}, True), rest(x | {"I_in": -1e-4}, False)
+    tau = 470e-9 / (1 / 26.7e3 + 1 / 100e3)
+    assert demo["t_open"] == pytest.approx(tau * math.log((start - end) / (8.5 - end)), rel=1e-12)
+
+
+def test_curve_follows_the_bounces(demo: Filled) -> None:
+    """Both lines from state to state by exponentials, and to rest after the last bounce."""
+    demo.put()
+    curve = demo.values["Curve"]
+    lines = (
+        ("C", ("on_fast", "V_top"), ("off_slow", "V_low"), "V_low"),
+        ("D", ("on_slow", "V_high"), ("off_fast", "V_least"), "V_least"),
+    )
+    times = [cell for cell in curve if re.fullmatch(r"A\d+", cell) and int(cell[1:]) > 3]
+    for cell, (column, new, old, start) in itertools.product(times, lines):
+        t, u = curve[cell], demo[start]
+        left = max(t, 0.0)
+        for length, (tau, level) in [
+            pair for new_for, old_for in PATTERN for pair in ((new_for, new), (old_for, old))
+        ] + [(1.0, new)]:
+            here = min(length, left)
+            u = demo[level] + (u - demo[level]) * math.exp(-here / demo[tau])
+            left -= here
+        assert curve[f"{column}{cell[1:]}"] == pytest.approx(u, rel=1e-9)

@@ -5,6 +5,7 @@ from __future__ import annotations
 import itertools
 import math
 import random
+import re
 from typing import Any
 
 import pytest
@@ -231,3 +232,19 @@ def test_longest_time_is_monotone_in_every_part(demo: Filled) -> None:
         times.append(c / (1 / r + 1 / 14.2e3) * math.log(end / (end - level)))
     assert demo["t_close_max"] == pytest.approx(max(times), rel=1e-12)
     assert demo["t_close_min"] == pytest.approx(min(times), rel=1e-12)
+
+
+def test_curve_follows_the_charge(demo: Filled) -> None:
+    """Both lines by the closed form V_end (1 - exp(-t / tau)); 0 before switching."""
+    demo.put()
+    assert demo["tau_late"] == pytest.approx(5.64e-3 / (1 / 74.8 + 1 / 14.2e3), rel=1e-13)
+    curve, shown = demo.values["Curve"], 0
+    lines = (("C", MEAN * 380, 74.8, 5.64e-3, 0.1), ("D", MEAN * 400, 68, 4.7e-3, 0.06))
+    for cell in [cell for cell in curve if re.fullmatch(r"A[1-9]\d*", cell) and int(cell[1:]) > 3]:
+        t = curve[cell]
+        for column, v, r, c, load in lines:
+            end = (v - load * r) * 14.2e3 / (14.2e3 + r)
+            there = -end * math.expm1(-t / c * (1 / r + 1 / 14.2e3)) if t > 0 else 0.0
+            assert curve[f"{column}{cell[1:]}"] == pytest.approx(there, rel=1e-9, abs=1e-9)
+            shown += t > 1.6
+    assert shown  # well past the latest time-out

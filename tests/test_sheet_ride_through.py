@@ -5,6 +5,7 @@ from __future__ import annotations
 import itertools
 import math
 import random
+import re
 from typing import Any
 
 import pytest
@@ -249,3 +250,40 @@ def test_curve_follows_the_circuit(demo: Filled) -> None:
                 carried(0.032 * LIFE, 23, u, DRAWN, "power", 0.09)[0], rel=1e-8
             )
     assert u == 18
+
+
+def test_curve_between_the_rows_of_its_table(demo: Filled) -> None:
+    """Time at each voltage of both lines by integration; afterwards what is left inside."""
+    demo.put()
+    curve = demo.values["Curve"]
+    lines = (
+        ("C", 0.032 * LIFE, 23.0, 0.09, "t_least", "V_left"),
+        ("D", 0.04 * LIFE, 23.5, 0.04, "t_ride", "V_rest"),
+    )
+    for column, c, start, series, end, left in lines:
+        cells = [
+            cell for cell in curve if re.fullmatch(column + r"\d+", cell) and int(cell[1:]) > 3
+        ]
+        times = {cell: curve[f"A{cell[1:]}"] for cell in cells}
+        assert max(times.values()) > 1.4 * demo["t_ride"]
+        for cell, t in times.items():
+            if t < 0:
+                assert curve[cell] == start
+            elif t > demo[end]:
+                assert curve[cell] == demo[left]
+            elif t > 0:
+                there = carried(c, start, curve[cell], DRAWN, "power", series)[0]
+                assert t == pytest.approx(there, rel=1e-3)
+
+
+@pytest.mark.parametrize(
+    ("kind", "last", "most"), [("current", 2.0, 2.0), ("resistance", 18 / 12, 23 / 12.09)]
+)
+def test_voltage_left_inside_for_other_loads(
+    demo: Filled, kind: str, last: float, most: float
+) -> None:
+    """V_min and the drop of the last current, by Ohm's law; a resistance draws most at first."""
+    demo.put(value_of_load=kind)
+    assert demo["V_left"] == pytest.approx(18 + 0.09 * last, rel=1e-13)
+    assert demo["V_rest"] == pytest.approx(18 + 0.04 * last, rel=1e-13)
+    assert demo["I_last"] == pytest.approx(most, rel=1e-13)
