@@ -20,7 +20,7 @@ FACTS = (
 )  # fmt: skip
 RUN = ("begin", "stop", "end")
 STAGES = ("starts", "tau", "heads", "jump", "stops")
-HEAT = ("until", "ours", "hand", "worst")
+HEAT = ("until", "ours", "hand", "high_lo", "high_hi", "low_lo", "low_hi", "worst")
 CHANGES = ("after", "end", "energy", "energy_hand", "goes", "cross", "stress")
 
 Rows = tuple[tuple[str, ...], ...]
@@ -144,7 +144,7 @@ def _squared(begin: str, heads: str, tau: str, time: str) -> str:
 
 
 def heat() -> Rows:
-    """Heat of the resistance in each stage: until when it flows, both ways, and the worst case."""
+    """Heat of the resistance in each stage: until when it flows, both ways, and over the bounds."""
     return _every([_heat(row) for row in range(1, ROWS + 1)])
 
 
@@ -170,16 +170,24 @@ def _heat(row: int) -> tuple[str, ...]:
         f"ABS(INDEX(high_begin,{row})-{fact('heads_lo', row)}))"
     )
     of_capacitor = f"{fact('x_hi', row)}/2*{apart}^2*(1-EXP(-2*{length}/{fact('tau_lo', row)}))"
-    corners = [
-        _squared(f"INDEX({of}_begin,{row})", fact(f"heads{end}", row), fact(time, row), length)
+    # the bounds of the current with both extremes of tau, each until a diode stops it
+    bounds = [
+        (of, f"INDEX({of}_begin,{row})", fact(f"heads{end}", row), time)
         for of, end in (("high", "_hi"), ("low", "_lo"))
-        for time in ("tau_lo", "tau_hi")
+        for time in ("lo", "hi")
     ]
+    untils, corners = [], []
+    for of, first, last, time in bounds:
+        longest = fact(f"tau_{time}", row)
+        stopped = f"MIN({length},{longest}*LN(1-{first}/{last}))"
+        untils.append(f'IF({tau}="","",IF(INDEX({of}_stop,{row})="",{length},{stopped}))')
+        corners.append(_squared(first, last, longest, f"here_{of}_{time}"))
     of_inductor = f"{r}*k_R_hi*MAX({','.join(corners)})"
     return (
         f'IF({tau}="",{length},IF(INDEX(hand_stop,{row})="",{length},{stops}))',
         f'IF({tau}="",{driven("")},IF(here_until=0,0,{ours}))',
         f'IF({tau}="",{driven("")},{hand})',
+        *untils,
         f'IF({tau}="",{driven("_hi")},IF({CAPACITOR},{of_capacitor},{of_inductor}))',
     )
 

@@ -30,12 +30,13 @@ def _listing(page: Page, book: Book, listing: Listing) -> None:
     row = page.down(head)
     quiet = style.font(SIZE, colour=style.QUIET)
     for column, span in zip(listing.columns, spans, strict=True):
-        page.text(row, span, column.heading, quiet, _side(column), "bottom", wrap=True)
+        side, indent = _side(column), _indent(column, span)
+        page.text(row, span, column.heading, quiet, side, "bottom", wrap=True, indent=indent)
     page.frame(row, "A:H", style.RULE)
     first = row + 1
     for number in range(1, listing.rows + 1):
         row = page.down(height)
-        shown = renamed(listing.shown, {"here_row": str(number)})
+        shown = f"IFERROR({renamed(listing.shown, {'here_row': str(number)})},FALSE)"
         for column, span in zip(listing.columns, spans, strict=True):
             page.text(
                 row,
@@ -45,6 +46,7 @@ def _listing(page: Page, book: Book, listing: Listing) -> None:
                 _side(column),
                 vertical="top",
                 wrap=True,
+                indent=_indent(column, span),
             )
         page.frame(row, "A:H", style.UNDER)
     for column, span in zip(listing.columns, spans, strict=True):
@@ -55,6 +57,11 @@ def _listing(page: Page, book: Book, listing: Listing) -> None:
 
 def _side(column: ListColumn) -> str:
     return "right" if column.quantity else "left"
+
+
+def _indent(column: ListColumn, span: str) -> int:
+    """Texts keep off the numbers on their left."""
+    return 0 if column.quantity or span[0] == "A" else 1
 
 
 def _spans(listing: Listing) -> list[str]:

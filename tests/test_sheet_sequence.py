@@ -110,6 +110,19 @@ def test_a_diode_stops_the_current_at_zero(demo: Filled) -> None:
     assert demo["W_all"] == pytest.approx(on + by_hand, rel=1e-8)
 
 
+def test_heat_behind_a_diode_is_bounded_by_what_is_stored(demo: Filled) -> None:
+    """Into a counter-voltage: the resistor takes less than L I^2 / 2 at its highest, by hand."""
+    demo.put(**{**INDUCTOR, **stages((0, "through R", 8, None, 110),
+                                     (1, "through R and diode", 4, None, -100)),
+                "value_of_t_end": 2.0, "value_of_t_ask": 1.5})  # fmt: skip
+    high = 110 * 1.1 / (8 * 0.95)
+    title, first = demo.places["heat_worst"]
+    column, row = first[:-1], int(first[-1])
+    second = demo.values[title][f"{column}{row + 1}"]
+    nominal = demo.values[title][f"{demo.places['heat_ours'][1][:-1]}{row + 1}"]
+    assert nominal < second < 2.2 * high**2 / 2
+
+
 def test_a_constant_current(demo: Filled) -> None:
     cells = stages((0, "constant current", 10, None, None, 2.0), (0.5, "held"))
     demo.put(**cells, value_of_direction="rising", value_of_t_end=1.0, value_of_t_ask=0.25,
