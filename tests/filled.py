@@ -153,7 +153,7 @@ def bad_values(entry: Entry) -> Iterator[tuple[str, dict[str, Any]]]:
     if entry.units:
         unit = f"unit_of_{entry.symbol}"
         yield "blank unit", {unit: None}
-        yield "number as unit", {unit: 1.0}
+        yield "number as unit", {unit: 7.0}  # 1 is a unit of a ratio
         yield "error as unit", {unit: ErrorKind.VALUE}
         yield "unknown unit", {unit: "furlong"}
         yield "wrong unit", {unit: "A" if entry.quantity == "capacitance" else "µF"}
