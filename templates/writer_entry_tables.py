@@ -231,7 +231,7 @@ class _Own(_Writing):
         sheet.freeze_panes = f"A{OWN_TOP}"
         for column in table.columns:
             letter = letters[column.name]
-            sheet.column_dimensions[letter].width = OWN_WIDTH
+            sheet.column_dimensions[letter].width = max(OWN_WIDTH, len(column.heading) + 4)
             head = sheet[f"{letter}{OWN_TOP - 2}"]
             head.value = column.heading
             head.font = style.font(10, bold=True)

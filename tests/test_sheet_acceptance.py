@@ -190,8 +190,8 @@ def test_a_flat_record_fails() -> None:
 
 FAULTS: list[tuple[dict[str, Any], str]] = [
     ({"values_of_measured_time": 99}, "row 2: times must rise"),
-    ({"values_of_measured_value": "OL"}, "row 1: voltage (of a current, that of its shunt) is not"),
-    ({"values_of_measured_value": None}, "row 1: voltage (of a current, that of its shunt) is mis"),
+    ({"values_of_measured_value": "OL"}, "row 1: voltage is not a number"),
+    ({"values_of_measured_value": None}, "row 1: voltage is missing"),
     ({"values_of_measured_time": 1e30}, "row 1: time is outside"),
     ({"unit_of_measured_time": "V"}, "time: its unit does not measure a time"),
 ]

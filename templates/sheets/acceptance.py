@@ -65,7 +65,7 @@ MEASURED = EntryTable(
     (
         NumberColumn("time", "time", "time", TIMES, -1e7, 1e7, "no record lasts longer"),
         NumberColumn(
-            "value", "voltage (of a current, that of its shunt)", "voltage", ("V", "mV", "kV"),
+            "value", "voltage", "voltage", ("V", "mV", "kV"),
             -1e6, 1e6, "no record of a voltage lies outside this",
         ),
     ),
@@ -384,7 +384,8 @@ SHEET = Sheet(
     picture=Picture(
         "acceptance.png",
         "The circuit is switched at t_switch. The probe, R_probe and C_probe, lies across the "
-        "capacitor that sees R_node; of an R-L circuit it lies across the shunt instead.",
+        "capacitor that sees R_node; of an R-L circuit it lies across a shunt, whose voltage is "
+        "entered for the current.",
     ),
     groups=(RECORD, DESIGN, INSTRUMENT),
     blocks=(FIT, PROBE, UNCERTAINTY, PATTERN),
