@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import csv
 import gc
+import json
 import sys
 from collections.abc import Iterable
 from enum import Enum
@@ -148,6 +149,28 @@ def pdf(
 
     for printed in print_sheets(files, force=force):
         console.print(f"{printed}")
+
+
+@app.command()
+def verify(
+    files: Annotated[list[Path], typer.Argument(help="Workbooks to verify.")],
+    json_: Annotated[bool, typer.Option("--json", help="Everything found, for machines.")] = False,
+) -> None:
+    """Recompute, compare with the sheet's own formulas, check by a second method; report.
+
+    Exit status 0 only when all is well with every file.
+    """
+    from tausheet.addin.verify import report, verify_files
+
+    every = []
+    for verified in verify_files(files):
+        every.append(verified)
+        if not json_:
+            report(console, verified)
+    if json_:
+        print(json.dumps([one.as_dict() for one in every], indent=2, ensure_ascii=False))
+    if not all(one.well for one in every):
+        raise typer.Exit(1)
 
 
 @app.command()

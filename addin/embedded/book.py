@@ -5,7 +5,7 @@ from __future__ import annotations
 import datetime
 import io
 import math
-from collections.abc import Iterable, Iterator
+from collections.abc import Callable, Iterable, Iterator
 from functools import cached_property
 from pathlib import Path
 from typing import Any
@@ -31,10 +31,11 @@ Users = dict[Key, Keys]
 Values = dict[str, dict[str, CellValue]]
 
 
-class _Reader(ExcelReader):
+class Reader(ExcelReader):
     """Reads a number as the number that the file holds, whatever format shows it as a date."""
 
     def read_worksheets(self) -> None:
+        """Read them with no format known as one of dates."""
         workbook: Any = self.wb
         workbook._date_formats = workbook._timedelta_formats = set()
         super().read_worksheets()
@@ -52,6 +53,9 @@ class Book:
             for name, d in sheet.defined_names.items()
         }
         self.known: dict[tuple[str, str, bool], tuple[Node, list[Area]]] = {}
+        self.watch: Callable[[Key, str, list[Any], Value], None] | None = None
+        """Is told of every call of a cell function: where, which, its arguments, its result."""
+        self._at: Key = ("", 0, 0)
         self._cells: dict[Key, CellValue] = {}
         self._texts: dict[Key, tuple[str, Area | None]] = {}
         self._filled_by: dict[Key, Key] = {}
@@ -70,7 +74,7 @@ class Book:
     @classmethod
     def load(cls, path: Path) -> Book:
         """Read an .xlsx; Refused names the cells that this engine does not compute."""
-        reader = _Reader(io.BytesIO(package.read(path)))
+        reader = Reader(io.BytesIO(package.read(path)))
         try:
             reader.read()
         except Exception as error:  # openpyxl has no error of its own for a damaged part
@@ -124,6 +128,11 @@ class Book:
         """What a defined name stands for on a sheet."""
         folded = name.casefold()
         return self._local_names.get((sheet, folded), self._names.get(folded))
+
+    def called(self, name: str, arguments: list[Any], result: Value) -> None:
+        """A formula has called a cell function."""
+        if self.watch is not None:
+            self.watch(self._at, name, arguments, result)
 
     def has_sheet(self, sheet: str) -> bool:
         """Whether there is a worksheet of this name."""
@@ -230,6 +239,7 @@ class Book:
 
     def _compute(self, key: Key) -> None:
         block = self._texts[key][1]
+        self._at = key
         try:
             value: Value = self._formulas[key].run()
         except NotHere as unknown:

@@ -10,7 +10,7 @@ import math
 import re
 from collections.abc import Callable, Iterator
 from dataclasses import dataclass
-from typing import Protocol
+from typing import Any, Protocol
 
 from openpyxl.formula import Tokenizer
 from openpyxl.formula.tokenizer import Token, TokenizerError
@@ -57,6 +57,9 @@ class Cells(Protocol):
 
     def has_sheet(self, sheet: str) -> bool:
         """Whether there is a worksheet of this name."""
+
+    def called(self, name: str, arguments: list[Any], result: Value) -> None:
+        """A formula has called a cell function."""
 
 
 @dataclass
@@ -281,7 +284,9 @@ class Formula:
 
         def run() -> Value:
             given = [None if one is None else one() for one in runs]
-            return cells.plain_grid(cells.call(name, given))
+            result = cells.plain_grid(cells.call(name, given))
+            self._book.called(name, given, result)
+            return result
 
         return Node(run)
 

@@ -1,0 +1,1 @@
+"""What a checker needs of a workbook: verify, seal, compare."""
