@@ -138,7 +138,9 @@ class Rows:
         for rule in self.table.rules:
             broken = self._rule(rule.holds, place)
             wrong.append(f"SUMPRODUCT(({place.index}<={last})*{broken})>0")
-        self.sheet[f"{self.used}{UNDER}"] = f"=IFERROR(IF(OR({','.join(wrong)}),0,1),0)"
+        # as an array formula, since Excel looks at one row alone where IF stands in SUMPRODUCT
+        cell = f"{self.used}{UNDER}"
+        self.sheet[cell] = ArrayFormula(cell, f"=IFERROR(IF(OR({','.join(wrong)}),0,1),0)")
 
     def _unless_well(self, well: str, looked_at: str) -> str:
         """What a column shows while the whole long table is well, and else."""

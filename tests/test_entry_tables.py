@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Iterator
 from dataclasses import replace
 from pathlib import Path
@@ -236,6 +237,27 @@ def test_values_given_cell_by_cell() -> None:
 def test_values_refused(key: str, value: str, sentence: str) -> None:
     with pytest.raises(TausheetError, match=sentence):
         typed({key: value})
+
+
+def test_a_text_is_never_taken_for_a_formula() -> None:
+    workbook = writer.build(SHEET, {"bounce.node.1": "=1+1"}, demo=True)
+    (title, cells), *_ = workbook.defined_names["value_of_bounce_node_1"].destinations
+    cell = workbook[title][cells.replace("$", "").split(":")[0]]
+    assert (cell.data_type, cell.value, cell.quotePrefix) == ("s", "=1+1", True)
+
+
+def test_if_over_rows_stands_in_array_formulas_alone(path: Path) -> None:
+    """Excel computes IF inside SUMPRODUCT for one row only unless the formula is an array's."""
+    plain = [
+        cell.value
+        for row in load_workbook(path)["Rows"]
+        for cell in row
+        if isinstance(cell.value, str) and cell.value.startswith("=")
+    ]
+    assert len(plain) > 20
+    for formula in plain:
+        for inside in re.findall(r"SUMPRODUCT\((.*)", formula):
+            assert not re.search(r"\bIF\([^(]*:", inside), formula
 
 
 def test_a_blank_form_asks_for_the_table() -> None:
