@@ -91,21 +91,26 @@ def literal(value: Any) -> str:
     return f'"{value}"' if isinstance(value, str) else repr(value)
 
 
-@pytest.fixture(scope="module")
-def workbook(tmp_path_factory: pytest.TempPathFactory) -> tuple[Path, list[Placed]]:
+def write_calls(path: Path, chosen: list[Case]) -> list[Placed]:
+    """A workbook that holds the calls, a sheet a function."""
     book = Workbook()
     book.remove(book.worksheets[0])
     placed = []
     rows = Counter[str]()
-    for case in cases():
+    for case in chosen:
         name = case.function
         sheet = book[name] if name in book.sheetnames else book.create_sheet(name)
         placed.append(place(sheet, rows[name] + 1, case))
         heights = [len(a) for a in case.arguments if isinstance(a, list)]
         rows[name] += max(1, len(placed[-1].expected), *heights) + 1
-    path = tmp_path_factory.mktemp("parity") / "calls.xlsx"
     book.save(path)
-    return path, placed
+    return placed
+
+
+@pytest.fixture(scope="module")
+def workbook(tmp_path_factory: pytest.TempPathFactory) -> tuple[Path, list[Placed]]:
+    path = tmp_path_factory.mktemp("parity") / "calls.xlsx"
+    return path, write_calls(path, cases())
 
 
 def agree(found: cells.CellValue, expected: cells.CellValue, case: Case) -> bool:
