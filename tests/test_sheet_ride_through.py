@@ -287,3 +287,15 @@ def test_voltage_left_inside_for_other_loads(
     assert demo["V_left"] == pytest.approx(18 + 0.09 * last, rel=1e-13)
     assert demo["V_rest"] == pytest.approx(18 + 0.04 * last, rel=1e-13)
     assert demo["I_last"] == pytest.approx(most, rel=1e-13)
+
+
+@pytest.mark.parametrize("kind", ["current", "resistance", "power"])
+def test_load_that_starts_below_its_lowest_voltage(demo: Filled, kind: str) -> None:
+    """No time, so no energy either, by both ways."""
+    demo.put(value_of_load=kind, value_of_V_min=22.9, value_of_R_load=5)
+    assert demo["V_go"] < 22.9
+    for name in ("t_ride_min", "t_least", "E_load", "C_need"):
+        assert isinstance(demo[name], ErrorKind), name
+        if name != "t_ride_min":
+            assert isinstance(demo[f"{name}_hand"], ErrorKind), name
+    assert demo["check_start"] == demo["check_time"] == demo["verdict"] == "FAIL"

@@ -339,8 +339,8 @@ ENERGY = Block(
             'FO_DISSIPATED(demand,"voltage",(demand+R_bad)*C_nom_lo*k_life,V_bad,0,0,t_least)))',
             "energy",
             "P t; I times the mean voltage times t; the integral of u^2 / R",
-            'IF(load="power",demand*t_least_hand,IF(load="current",'
-            f"{_C_LO}*(V_bad^2-V_min^2)/2,{_C_LO}*(demand+R_bad)/demand*(V_bad^2-V_min^2)/2))",
+            'IF(ISNUMBER(t_least_hand),IF(load="power",demand*t_least_hand,IF(load="current",'
+            f"{_C_LO}*(V_bad^2-V_min^2)/2,{_C_LO}*(demand+R_bad)/demand*(V_bad^2-V_min^2)/2)),NA())",
         ),
         Quantity(
             "V_left",
