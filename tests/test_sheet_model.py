@@ -12,7 +12,7 @@ import pytest
 
 from tausheet.addin import embedded
 from tausheet.functions.errors import TausheetError
-from tausheet.templates import formulas, style, writer, writer_checks, writer_tables
+from tausheet.templates import SHEETS, formulas, style, writer, writer_checks, writer_tables
 from tausheet.templates.model import (
     COUNT,
     NUMBER,
@@ -360,3 +360,8 @@ def test_the_worked_example_of_the_guide_is_a_sheet(tmp_path: Path) -> None:
     assert (read("verdict"), read("warning_warmed_up_in_part")) == ("PASS", "-")
     late = computed(tmp_path, room["SHEET"], t_allowed="15 min")
     assert (late("verdict"), late("warning_warmed_up_in_part")) == ("FAIL", "WARNING")
+
+
+def test_no_two_demo_pages_have_one_document_number() -> None:
+    numbers = [sheet.demo.number for sheet in SHEETS.values()]
+    assert len(set(numbers)) == len(numbers)

@@ -396,7 +396,7 @@ SHEET = Sheet(
     cautions=CAUTIONS,
     basis=BASIS,
     demo=Heading(
-        "Q4-CAL-012",
+        "Q4-CAL-013",
         "Limit-switch input: measured filter",
         "Quay 4, harbour crane, drive retrofit",
         "A",
