@@ -252,6 +252,7 @@ def test_lowest_final_value_where_the_input_gives_current_and_the_capacitor_leak
     levels = [(4.75 / r + 50e-6) / (1 / r + 2e-6 / 50) for r in (0.98e5, 1.02e5)]
     assert levels[0] < levels[1]
     assert demo["V_least"] == pytest.approx(levels[0], rel=1e-12)
+    assert demo["V_least_hand"] == pytest.approx(levels[0], rel=1e-12)
 
 
 def test_curve_follows_the_circuit(demo: Filled) -> None:

@@ -183,6 +183,13 @@ def test_bounces_that_add_up(demo: Filled) -> None:
     demo.put(**alone)
     assert demo["V_peak"] == pytest.approx(demo["V_one"], rel=1e-12)
     assert "bounces_that_add_up" not in demo.warnings()
+    # after a pause of 20 ms little is left of the first one: no warning below a tenth of 12 V
+    demo.put(
+        value_of_bounce_old_1=20,
+        **{name: None for name in alone if not name.endswith("_2")},
+    )
+    assert demo["V_one"] < demo["V_peak"] < demo["V_one"] + 0.1 * 12
+    assert "bounces_that_add_up" not in demo.warnings()
 
 
 def test_highest_level_need_not_be_at_the_last_bounce(demo: Filled) -> None:
