@@ -11,7 +11,7 @@ import posixpath
 import re
 import zipfile
 from bisect import bisect_right
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Iterator, Mapping
 from pathlib import Path
 from typing import Any
 from xml.etree.ElementTree import ParseError
@@ -313,28 +313,30 @@ def _escaped(text: str) -> str:
     return escape(_CONTROL.sub(lambda found: f"_x{ord(found[0]):04X}_", text))
 
 
-def formulas_spelled_plainly(data: bytes) -> tuple[bytes, Iterable[str]]:
-    """Our functions by their plain names where LibreOffice has stored them by its long ones."""
-    prefix = b"ORG.TAUSHEET.FUNCTIONS."
-    changed, cells = {}, []
-    with zipfile.ZipFile(io.BytesIO(data)) as package:
-        for title, part in sheet_parts(package).items():
-            xml = package.read(part)
-            if prefix not in xml.upper():
-                continue
-            found = re.compile(
-                rb'(<c\b[^>]*\br="([A-Z]+[0-9]+)"[^>]*>\s*<f\b[^>]*>)([^<]*)(</f>)', re.IGNORECASE
-            )
+_LONG_NAME = re.compile(rb"ORG\.TAUSHEET\.FUNCTIONS\.(?=FO_[A-Z0-9_]+ *\()", re.IGNORECASE)
+_FORMULA = re.compile(rb'(<c\b[^>]*\br="([A-Z]+[0-9]+)"[^>]*>\s*<f\b[^>]*>)([^<]*)(</f>)')
+_NAME = re.compile(rb'(<definedName\b[^>]*\bname="([^"]+)"[^>]*>)([^<]*)(</definedName>)')
 
-            def plain(match: re.Match[bytes], title: str = title) -> bytes:
-                formula = re.sub(re.escape(prefix), b"", match[3], flags=re.IGNORECASE)
-                if formula != match[3]:
-                    cells.append(f"{title}!{match[2].decode()}")
+
+def formulas_spelled_plainly(data: bytes) -> tuple[bytes, list[str]]:
+    """Our functions by their plain names where LibreOffice has stored them by its long ones.
+
+    Also where that was: each cell as Sheet!A1, and each defined name.
+    """
+    changed, found = {}, []
+    with zipfile.ZipFile(io.BytesIO(data)) as package:
+        titles = {part: f"{title}!" for title, part in sheet_parts(package).items()}
+        for part in (*titles, "xl/workbook.xml"):
+            xml = package.read(part)
+            where = titles.get(part, "")
+
+            def plain(match: re.Match[bytes], where: str = where) -> bytes:
+                formula, count = _LONG_NAME.subn(b"", match[3])
+                if count:
+                    found.append(f"{where}{match[2].decode(errors='replace')}")
                 return match[1] + formula + match[4]
 
-            changed[part] = found.sub(plain, xml)
-        names = package.read("xl/workbook.xml")
-        if prefix in names.upper():
-            changed["xl/workbook.xml"] = re.sub(re.escape(prefix), b"", names, flags=re.IGNORECASE)
-            cells.append("defined names")
-    return (replaced(data, changed) if changed else data), cells
+            spelled = (_FORMULA if where else _NAME).sub(plain, xml)
+            if spelled != xml:
+                changed[part] = spelled
+    return (replaced(data, changed) if changed else data), found

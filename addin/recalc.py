@@ -28,7 +28,10 @@ class Report:
         if self.errors:
             line += f", {self.errors} of them errors"
         if self.respelled:
-            line += f"; {self.respelled} cells called our functions by LibreOffice's long names"
+            line += (
+                f"; {self.respelled} formulas called our functions by LibreOffice's long names "
+                "and call them by their plain ones again"
+            )
         return line
 
 
@@ -59,4 +62,4 @@ def recalc(
         temporary.write_bytes(package.with_values(data, values))
     stored = [value for cells in values.values() for value in cells.values()]
     errors = sum(isinstance(value, ErrorKind) for value in stored)
-    return Report(target, len(stored), errors, len(list(respelled)))
+    return Report(target, len(stored), errors, len(respelled))

@@ -5,6 +5,7 @@ from __future__ import annotations
 import datetime
 import io
 import math
+import warnings
 from collections.abc import Callable, Iterable, Iterator
 from functools import cached_property
 from pathlib import Path
@@ -33,6 +34,12 @@ Values = dict[str, dict[str, CellValue]]
 
 class Reader(ExcelReader):
     """Reads a number as the number that the file holds, whatever format shows it as a date."""
+
+    def read(self) -> None:
+        """Read it; warnings of what openpyxl would not write again are none here: it writes not."""
+        with warnings.catch_warnings():
+            warnings.simplefilter("ignore")
+            super().read()
 
     def read_worksheets(self) -> None:
         """Read them with no format known as one of dates."""
