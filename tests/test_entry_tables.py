@@ -16,6 +16,8 @@ from openpyxl import load_workbook
 from tausheet import templates
 from tausheet.addin import calc, package
 from tausheet.addin.embedded import Book
+from tausheet.addin.make import make_sheet
+from tausheet.addin.review.verify import verify
 from tausheet.functions.errors import ErrorKind, TausheetError
 from tausheet.templates import formulas, values_tables, writer
 from tausheet.templates.model import (
@@ -327,3 +329,20 @@ def test_list_shows_the_columns(monkeypatch: pytest.MonkeyPatch) -> None:
 def test_a_slip_in_a_table_stops_the_build(table: EntryTable, sentence: str) -> None:
     with pytest.raises(TausheetError, match=sentence):
         formulas.check(replace(BASE, filled_in=(table,)))
+
+
+def test_verify_knows_the_rows_of_a_long_table(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """What stands in them are results: none is content that someone added, and none may differ."""
+    monkeypatch.setitem(SHEETS, "bleed", SHEET)
+    path = tmp_path / "made.xlsx"
+    make_sheet("bleed", path, {}, demo=True)
+    assert verify(path).well
+    title, first = Filled(SHEET, path).places["measured_level"]
+    below = f"{first.rstrip('0123456789')}20"
+    path.write_bytes(package.with_values(path.read_bytes(), {title: {below: 99.0}}))
+    found = [one for one in verify(path).findings if one.counts]
+    assert [(one.kind, one.cell) for one in found] == [
+        ("stale or overwritten value", f"{title}!{below}")
+    ]

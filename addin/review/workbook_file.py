@@ -42,6 +42,7 @@ class WorkbookFile:
             reader.read()
         except Exception as error:  # openpyxl has no error of its own for a damaged part
             raise package.Unreadable(f"{self.path} is damaged ({error})") from None
+        _empty_blocks(reader.wb)
         return reader.wb
 
     @cached_property
@@ -140,6 +141,22 @@ class WorkbookFile:
     def values_named(self, name: str) -> list[CellValue]:
         """The values of those cells."""
         return [self.value(*place) for place in self.cells_named(name)]
+
+
+def _empty_blocks(workbook: Any) -> None:
+    """Take away what stands in the cells of an array formula's block: results, and no content."""
+    for sheet in workbook.worksheets:
+        cells = list(sheet._cells.values())
+        for first in [cell for cell in cells if isinstance(cell.value, ArrayFormula)]:
+            left, top, right, bottom = range_boundaries(first.value.ref)
+            for cell in cells:
+                if (
+                    cell is not first
+                    and left <= cell.column <= right
+                    and top <= cell.row <= bottom
+                    and not isinstance(cell.value, ArrayFormula)
+                ):
+                    cell.value = None
 
 
 def formula_of(cell: Any) -> str:
