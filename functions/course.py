@@ -89,15 +89,18 @@ class Course:
         rate, low, high, begun, longest = 0.0, 0.0, 0.0, 0.0, self.tau
         for source in self.sources:
             v, begins = source.values, source.start
-            ends = (v[0], v[0])  # what the forcing lies between when all has begun
+            ends = (v[0], v[0])  # what its share of y lies between when it has settled
             if source.shape == "slope":
                 rate += v[0]
                 size += abs(v[0]) * (begins + self.tau)
                 ends = (0.0, 0.0)
             elif source.shape == "square":
-                ends = (v[0], v[1])
+                size += max(abs(v[0]), abs(v[1]))
+                ends = _settled_square(v[0], v[1], v[2] / self.tau, v[3])
             elif source.shape == "sine":
-                ends = (-abs(v[0]), abs(v[0]))
+                size += abs(v[0])
+                swing = 1.000001 * abs(v[0]) / math.hypot(1.0, 2 * math.pi * v[1] * self.tau)
+                ends = (-swing, swing)
             elif source.shape in ("pulse", "decay"):
                 size += abs(v[0])
                 ends = (0.0, 0.0)
@@ -154,3 +157,15 @@ class Course:
         if repetition:
             begin, period = repetition
             yield Repeating(list(self._between(begin, begin + period)), period)
+
+
+def _settled_square(low: float, high: float, length: float, duty: float) -> tuple[float, float]:
+    """Bounds of the settled response to a square whose period is `length` time constants."""
+    margin = 1e-6 * (abs(low) + abs(high))
+    if length < 1e-6:
+        mean = low + duty * (high - low)
+        return mean - margin, mean + margin
+    whole = -math.expm1(-length)
+    on, off = -math.expm1(-duty * length) / whole, -math.expm1(-(1 - duty) * length) / whole
+    ends = (low + (high - low) * (1 - off), low + (high - low) * on)
+    return min(ends) - margin, max(ends) + margin
