@@ -25,6 +25,11 @@ def report(console: Console, verified: Verified) -> None:
     kind = f"calc sheet {verified.sheet}" if verified.sheet else "no calc sheet of tausheet"
     console.print(f"{escape(str(verified.path))}: {kind}", style="bold")
     console.print(f"{verified.formulas} formulas recomputed")
+    checked = [
+        f"{name} {tally.checked}" for name, tally in verified.second.items() if tally.checked
+    ]
+    if checked:
+        console.print(f"results checked by a second method, too: {', '.join(checked)}")
     if verified.findings:
         table = Table(box=None, pad_edge=False)
         for heading in ("finding", "cell", "what is there", "what was expected"):

@@ -7,11 +7,18 @@ named warnings, blocks that a draft need not have signed, a sheet that is not se
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, field
+from dataclasses import asdict, dataclass, field
 from pathlib import Path
 from typing import Any
 
-from tausheet.addin.review import verify_looks, verify_own, verify_state, verify_values
+from tausheet.addin.review import (
+    second_method,
+    verify_looks,
+    verify_own,
+    verify_second,
+    verify_state,
+    verify_values,
+)
 from tausheet.addin.review.finding import Finding, in_order
 from tausheet.addin.review.workbook_file import WorkbookFile
 from tausheet.functions import version
@@ -26,6 +33,8 @@ class Verified:
     """The calc sheet's name, "" for any other workbook."""
     formulas: int
     findings: list[Finding] = field(default_factory=list)
+    second: dict[str, verify_second.Tally] = field(default_factory=dict)
+    """By cell function, how many results the second method has checked."""
 
     @property
     def well(self) -> bool:
@@ -40,6 +49,10 @@ class Verified:
             "calc_sheet": self.sheet or None,
             "well": self.well,
             "formulas": self.formulas,
+            "second_method": {
+                name: {**asdict(tally), "how": second_method.how(name)}
+                for name, tally in sorted(self.second.items())
+            },
             "findings": [finding.as_dict() for finding in self.findings],
         }
 
@@ -53,6 +66,8 @@ def verify(path: Path) -> Verified:
     if file.refusal:
         instead = "" if file.failed else "computed with LibreOffice instead"
         found.append(Finding("not recomputed", "", file.refusal, instead, counts=file.failed))
+    found += verify_second.check(file, result.second)
+    found += verify_second.recomputed_only(result.second)
     found += verify_looks.of_workbook(file)
     if sheet is not None:
         found += verify_state.findings(file)
