@@ -13,7 +13,7 @@ from openpyxl.worksheet.worksheet import Worksheet
 from tausheet.templates import style
 from tausheet.templates.book import Book, address
 from tausheet.templates.formulas import LONG, PAGE_COLUMNS
-from tausheet.templates.model import EntryColumn, EntryTable, NumberColumn, WordColumn
+from tausheet.templates.model import EntryColumn, EntryTable, NumberColumn, TextColumn, WordColumn
 from tausheet.templates.page import Page
 from tausheet.templates.values import shown_unit
 from tausheet.templates.writer_entries import allowed_range
@@ -204,6 +204,8 @@ class _OnPage(_Writing):
                     row, span, None, style.font(SIZE, bold=not text), "left" if text else "center"
                 )
                 self.book.input_cell(cell, self.values.cells.get((i + 1, column.name)))
+                if isinstance(column, TextColumn):
+                    cell.number_format = "@"  # a node named 1 is a name
                 page.frame(row, span, style.BOX)
             label = ""
             if self._labels():

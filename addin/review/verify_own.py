@@ -100,6 +100,7 @@ class Comparison:
             for name in own.defined_names
             if _TYPED.match(name)
             for title, cell in _cells(own, name)
+            if cell.number_format != "@"
         }
 
     def findings(self) -> Iterator[Finding]:
