@@ -7,9 +7,12 @@ is copied as it is, compressed bytes included.
 from __future__ import annotations
 
 import io
+import lzma
 import posixpath
 import re
+import struct
 import zipfile
+import zlib
 from bisect import bisect_right
 from collections.abc import Iterator, Mapping
 from pathlib import Path
@@ -19,6 +22,7 @@ from xml.parsers import expat
 from xml.sax.saxutils import escape
 
 from defusedxml import DefusedXmlException, ElementTree
+from openpyxl.utils import range_boundaries
 
 from tausheet.addin.cells import CellValue
 from tausheet.functions.errors import ErrorKind, TausheetError
@@ -28,12 +32,23 @@ Values = Mapping[str, Mapping[str, CellValue]]
 MOST_BYTES = 100_000_000
 """Unpacked size beyond which a workbook is not read: a calc sheet has about 1 MB."""
 _MOST_PARTS = 5_000
+MOST_ELEMENTS = 500_000
+"""XML elements of all worksheets: the largest calc sheet has 150,000."""
+_MOST_SPANNED = 200_000
+"""Cells under merged blocks and links: readers visit each, and a block can name billions."""
 _TARGET = "{http://schemas.openxmlformats.org/officeDocument/2006/relationships}id"
 _OLD_FORMAT = b"\xd0\xcf\x11\xe0"
 
 
 class Unreadable(TausheetError):
     """A file that is no workbook, or one that is not safe to read."""
+
+
+_BROKEN = (
+    *(zipfile.BadZipFile, zlib.error, lzma.LZMAError, struct.error, EOFError, OSError),
+    *(NotImplementedError, RuntimeError, ValueError),
+)
+"""What zipfile raises for a package that is not whole."""
 
 
 def read(path: Path) -> bytes:
@@ -53,7 +68,7 @@ def read(path: Path) -> bytes:
         with zipfile.ZipFile(io.BytesIO(data)) as package:
             _inspect(path, package)
             _check_sheets(path, package)
-    except (zipfile.BadZipFile, EOFError, NotImplementedError, RuntimeError, ValueError) as error:
+    except _BROKEN as error:
         raise Unreadable(f"{path} is not a whole .xlsx workbook ({error})") from None
     return data
 
@@ -63,7 +78,7 @@ def _inspect(path: Path, package: zipfile.ZipFile) -> None:
     names = [part.filename for part in parts]
     if len(parts) > _MOST_PARTS or sum(part.file_size for part in parts) > MOST_BYTES:
         raise Unreadable(f"{path} would unpack to more than a workbook should")
-    if len(set(names)) != len(names) or any(".." in n.split("/") or n[:1] == "/" for n in names):
+    if len(set(names)) != len(names) or any(map(_leads_outside, names)):
         raise Unreadable(f"{path} has parts with doubtful names")
     if any(part.flag_bits & 1 for part in parts):
         raise Unreadable(f"{path} is encrypted")
@@ -76,19 +91,52 @@ def _inspect(path: Path, package: zipfile.ZipFile) -> None:
         left -= len(content)
         if left < 0:
             raise Unreadable(f"{path} would unpack to more than a workbook should")
-        if part.filename.endswith((".xml", ".rels", ".vml")) and (
-            content[:2] in (b"\xff\xfe", b"\xfe\xff") or re.search(rb"<!(DOCTYPE|ENTITY)", content)
-        ):
+        if _declares(content):
             raise Unreadable(f"{path}: {part.filename} holds declarations that no workbook needs")
 
 
+def _leads_outside(name: str) -> bool:
+    steps = name.replace("\\", "/").split("/")
+    return ".." in steps or steps[0] == "" or ":" in name
+
+
+def _declares(content: bytes) -> bool:
+    """Whether a part is XML with declarations, or in an encoding that could hide them.
+
+    Whatever its name: which part holds what is said inside the package.
+    """
+    head = content.removeprefix(b"\xef\xbb\xbf").lstrip()[:4]
+    wide = content[:2] in (b"\xff\xfe", b"\xfe\xff") or (b"<" in head and b"\0" in head)
+    return wide or (head[:1] == b"<" and re.search(rb"<!(DOCTYPE|ENTITY)", content) is not None)
+
+
 def _check_sheets(path: Path, package: zipfile.ZipFile) -> None:
+    elements = spanned = 0
+
+    def begin(name: str, attributes: dict[str, str]) -> None:
+        nonlocal elements, spanned
+        elements += 1
+        if elements > MOST_ELEMENTS:
+            raise Unreadable(f"{path} has more cells than a workbook of calculations should")
+        if name.rpartition(":")[2] in ("mergeCell", "hyperlink"):
+            spanned += _spanned(attributes.get("ref", "A1"))
+            if spanned > _MOST_SPANNED:
+                raise Unreadable(f"{path} merges or links more cells than a sheet can show")
+
     try:
         for part in sheet_parts(package).values():
             parser = expat.ParserCreate()
+            parser.StartElementHandler = begin
             parser.Parse(package.read(part), True)
     except (KeyError, ParseError, DefusedXmlException, expat.ExpatError) as error:
         raise Unreadable(f"{path} is damaged: its worksheets cannot be found ({error})") from None
+
+
+def _spanned(reference: str) -> int:
+    """How many cells a block covers; an edge left out (a whole column) counts as the far one."""
+    left, top, right, bottom = range_boundaries(reference)
+    wide = (right or 16_384) - (left or 1) + 1
+    return max(wide, 1) * max((bottom or 1_048_576) - (top or 1) + 1, 1)
 
 
 def sheet_parts(package: zipfile.ZipFile) -> dict[str, str]:

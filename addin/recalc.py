@@ -58,7 +58,11 @@ def recalc(
     target = out if out is not None else path
     with files.replacing(target, force=force or out is None) as temporary:
         temporary.write_bytes(data)
-        values = engine_named(engine)(temporary)
+        try:
+            values = engine_named(engine)(temporary)
+        except TausheetError as error:  # which must not name a file that nobody knows
+            error.args = (str(error).replace(str(temporary), str(path)),)
+            raise
         temporary.write_bytes(package.with_values(data, values))
     stored = [value for cells in values.values() for value in cells.values()]
     errors = sum(isinstance(value, ErrorKind) for value in stored)

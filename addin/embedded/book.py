@@ -18,7 +18,16 @@ from openpyxl.worksheet.formula import ArrayFormula
 
 from tausheet.addin import package
 from tausheet.addin.cells import CellValue
-from tausheet.addin.embedded.parser import MANY, MOST_CELLS, Area, Formula, Node, Unknown, size
+from tausheet.addin.embedded.parser import (
+    MANY,
+    MOST_CELLS,
+    MOST_STEPS_IN_ALL,
+    Area,
+    Formula,
+    Node,
+    Unknown,
+    size,
+)
 from tausheet.addin.embedded.refused import Refused
 from tausheet.addin.embedded.values import Grid, NotHere, PassedOn, Value, top_left
 from tausheet.functions.errors import ErrorKind
@@ -39,7 +48,10 @@ class Reader(ExcelReader):
         """Read it; warnings of what openpyxl would not write again are none here: it writes not."""
         with warnings.catch_warnings():
             warnings.simplefilter("ignore")
-            super().read()
+            try:
+                super().read()
+            except Exception as error:  # of which the first line says what is wrong
+                raise ValueError(str(error).partition("\n")[0] or repr(error)) from None
 
     def read_worksheets(self) -> None:
         """Read them with no format known as one of dates."""
@@ -59,7 +71,7 @@ class Book:
             for sheet in workbook.worksheets
             for name, d in sheet.defined_names.items()
         }
-        self.known: dict[tuple[str, str, bool], tuple[Node, list[Area]]] = {}
+        self.known: dict[tuple[str, str, bool], tuple[Node, list[Area], int]] = {}
         self.watch: Callable[[Key, str, list[Any], Value], None] | None = None
         """Is told of every call of a cell function: where, which, its arguments, its result."""
         self._at: Key = ("", 0, 0)
@@ -74,6 +86,8 @@ class Book:
         small = sum(size(area) for area in areas if size(area) <= MANY)
         if small + sum(size(area) for area in {*areas} if size(area) > MANY) > MOST_CELLS:
             raise Refused("the workbook", "its formulas refer to more cells than this engine reads")
+        if sum(formula.steps for formula in self._formulas.values()) > MOST_STEPS_IN_ALL:
+            raise Refused("the workbook", "its names stand for more than this engine computes")
         self._order = list(self._in_order())
         self._stale: set[Key] = set(self._formulas)
         self._read_before: dict[Area, Grid] = {}

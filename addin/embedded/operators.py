@@ -18,6 +18,8 @@ from tausheet.addin.embedded.values import (
 )
 from tausheet.functions.errors import ErrorKind
 
+LONGEST_TEXT = 32_767
+
 
 def _added(a: float, b: float) -> float:
     # a sum that all but cancels is 0: spreadsheets hide the last bits so
@@ -75,7 +77,11 @@ def _joined(a: Scalar, b: Scalar) -> Scalar:
     left, right = text(a), text(b)
     if isinstance(right, ErrorKind):
         return right
-    return left if isinstance(left, ErrorKind) else left + right
+    if isinstance(left, ErrorKind):
+        return left
+    if len(left) + len(right) > LONGEST_TEXT:
+        raise NotHere(f"a text of more than {LONGEST_TEXT} characters, the most a cell holds")
+    return left + right
 
 
 def negated(value: Scalar) -> Scalar:

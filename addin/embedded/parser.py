@@ -30,6 +30,9 @@ STORED_PREFIX = "ORG.TAUSHEET.FUNCTIONS."
 _DEEPEST = 200
 MOST_CELLS = 2_000_000
 """More than this in a range, or in all ranges of a workbook, is left to LibreOffice."""
+MOST_STEPS = 100_000
+"""What a formula may stand for: a name of two names of two names doubles with each."""
+MOST_STEPS_IN_ALL = 5_000_000
 
 Run = Callable[[], Value]
 Area = tuple[str, int, int, int, int]
@@ -43,7 +46,7 @@ class Unknown(Exception):
 class Cells(Protocol):
     """What a formula needs of its workbook."""
 
-    known: dict[tuple[str, str, bool], tuple[Node, list[Area]]]
+    known: dict[tuple[str, str, bool], tuple[Node, list[Area], int]]
     """What names have been parsed to, by sheet, name and kind of formula."""
 
     def value(self, sheet: str, row: int, column: int) -> Scalar:
@@ -79,6 +82,8 @@ class Formula:
         self._book, self._sheet, self._row, self._array = book, sheet, row, array
         self.areas: list[Area] = []
         self._names: list[str] = []
+        self.steps = 0
+        """How much there is to compute, with each name counted as often as it is used."""
         node = self._parsed(text)
         if node.is_range and not array and node.reference is None:
             raise Unknown("it gives a range where a single value belongs")
@@ -138,6 +143,7 @@ class Formula:
         return run if node.reference or node.constant else lambda: _one(run())
 
     def _operand(self, tokens: _Tokens, array: bool) -> Node:
+        self._count(1)
         token = tokens.next()
         if token.type == Token.OP_PRE:
             inner = self._expression(tokens, BINDING["prefix"], array)
@@ -186,10 +192,11 @@ class Formula:
             raise Unknown(f"{text} refers to another workbook, a table or a missing worksheet")
         key = (self._sheet, text.casefold(), self._array)
         if key in self._book.known:
-            node, areas = self._book.known[key]
+            node, areas, steps = self._book.known[key]
+            self._count(steps)
             self.areas += areas
             return node
-        first = len(self.areas)
+        first, steps = len(self.areas), self.steps
         content = self._book.named(self._sheet, text)
         if content is None:
             raise Unknown(f"the name {text} is not defined")
@@ -201,8 +208,13 @@ class Formula:
         node = self._parsed("=" + content.removeprefix("="))
         self._names.pop()
         if "ROW(" not in content.upper():  # which depends on the cell that uses the name
-            self._book.known[key] = (node, self.areas[first:])
+            self._book.known[key] = (node, self.areas[first:], self.steps - steps)
         return node
+
+    def _count(self, steps: int) -> None:
+        self.steps += steps
+        if self.steps > MOST_STEPS:
+            raise Unknown("its names stand for more than this engine computes")
 
     def _area(self, text: str) -> Area | None:
         sheet, _, local = text.rpartition("!")
