@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import subprocess
 import sys
 import timeit
@@ -17,6 +18,7 @@ from tausheet.addin.embedded import Book
 from tausheet.templates.model import Input
 
 BASELINE = "from openpyxl import Workbook; from openpyxl.chart import ScatterChart; import numpy"
+POINTS = 10_000
 
 
 def report(benchmark: BenchmarkFixture, baseline: float, what: str, wanted: float) -> None:
@@ -62,6 +64,31 @@ def bench_new(benchmark: BenchmarkFixture, tmp_path: Path, name: str) -> None:
     new()
     benchmark.pedantic(new, rounds=3)
     report(benchmark, a_new_process(), "a new process that imports openpyxl and numpy", 2)
+
+
+def bench_acceptance_of_10_000_points(benchmark: BenchmarkFixture, tmp_path: Path) -> None:
+    """`tausheet new acceptance` with a full table of points; wanted: at most 3 s."""
+    values = tmp_path / "points.csv"
+    lines = ["symbol,value"]
+    for number in range(1, POINTS + 1):
+        time = 60e-3 * number / POINTS
+        lines.append(f"measured.time.{number},{time!r}")
+        level = 24 * (1 - math.exp(-time / 10.3e-3)) + 0.04 * math.sin(7919 * number)
+        lines.append(f"measured.value.{number},{level!r}")
+    values.write_text("\n".join(lines))
+    out = tmp_path / "acceptance.xlsx"
+    command = [sys.executable, "-m", "tausheet.addin.cli", "new", "acceptance", str(out)]
+
+    def new() -> None:
+        subprocess.run(
+            [*command, "--demo", "--values", str(values), "--force"],
+            check=True,
+            capture_output=True,
+        )
+
+    new()
+    benchmark.pedantic(new, rounds=3)
+    report(benchmark, a_new_process(), "a new process that imports openpyxl and numpy", 3)
 
 
 @pytest.mark.parametrize("name", templates.SHEETS)
