@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import os
 import random
 import signal
@@ -12,6 +13,7 @@ import time
 from pathlib import Path
 
 import pytest
+from openpyxl import Workbook
 
 from tausheet.addin.files import NotWritten, replacing
 
@@ -50,6 +52,41 @@ def test_a_process_killed_at_any_moment_leaves_a_whole_file(tmp_path: Path) -> N
         writer.wait()
         writer.stdout.close()
         assert target.read_bytes() in (OLD, NEW)
+
+
+def killed(command: str, folder: Path, times: int, seed: int) -> dict[str, int]:
+    """How often the old and the new file were there after a kill; a broken one fails."""
+    book = Workbook()
+    sheet = book.worksheets[0]
+    for row in range(1, 60):
+        sheet.cell(row, 1, f"=FO_STEP({row},50,0,5)")
+    book.save(folder / "old.xlsx")
+    script = Path(__file__).with_name("run_and_be_killed.py")
+    done = subprocess.run(
+        [sys.executable, script, command, folder, str(times), str(seed)],
+        capture_output=True,
+        text=True,
+        timeout=600,
+    )
+    assert done.returncode == 0, done.stderr[-2000:]
+    seen: dict[str, int] = json.loads(done.stdout)
+    assert seen["old"] + seen["new"] == times
+    return seen
+
+
+def test_recalc_killed_at_100_moments_leaves_the_old_file_or_the_new(tmp_path: Path) -> None:
+    seen = killed("recalc", tmp_path, 100, 1)
+    assert min(seen["old"], seen["new"]) >= 5, "moments before and after the change"
+    assert seen["left behind"] >= 5, "moments while it is written"
+
+
+@pytest.mark.campaign
+@pytest.mark.parametrize("command", ["new", "index"])
+def test_making_killed_at_100_moments_leaves_the_old_file_or_the_new(
+    command: str, tmp_path: Path
+) -> None:
+    seen = killed(command, tmp_path, 100, 2)
+    assert min(seen["old"], seen["new"]) >= 5
 
 
 def test_an_existing_file_stays_without_force(tmp_path: Path) -> None:
