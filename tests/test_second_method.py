@@ -180,6 +180,44 @@ def test_stages_with_a_hold() -> None:
     assert outcome("FO_STAGES_CROSSING", (2.5, 0.0, stages), float(mp.log(2))).agrees
 
 
+NETWORK = [
+    ["Name", "Kind", "From", "To", "Value", "Before"],
+    ["Supply", "voltage source", "ground", "in", 24.0, 0.0],
+    ["R1", "resistor", "in", "out", 3000.0, None],
+    ["R2", "resistor", "out", "ground", 1000.0, None],
+    ["C1", "capacitor", "out", "ground", 2e-6, None],
+]
+"""Seen from C1: 6 V behind 750 ohm, so tau = 1.5 ms (Thevenin, by hand)."""
+
+
+def test_a_network_stepped_through_all_its_equations() -> None:
+    v = float(step(0.002, 0.0015, 0, 6))
+    supply = -(24 - v) / 3000
+    cases: list[tuple[str, tuple[Any, ...], Any]] = [
+        ("FO_NETWORK_AT", (0.002, NETWORK, "voltage at out"), v),
+        ("FO_NETWORK_AT", (0.002, NETWORK, "current through R2"), v / 1000),
+        ("FO_NETWORK_AT", (0.002, NETWORK, "current through C1"), -supply - v / 1000),
+        ("FO_NETWORK_AT", (0.002, NETWORK, "power in Supply"), 24 * supply),
+        ("FO_NETWORK_AT", (0.0, NETWORK, "current through C1"), 0.008),
+        ("FO_NETWORK_CROSSING", (3.0, NETWORK, "voltage at out"), float(0.0015 * mp.log(2))),
+        ("FO_NETWORK", (NETWORK, "tau"), 0.0015),
+        ("FO_NETWORK", (NETWORK, "final"), 6.0),
+    ]
+    for name, arguments, true in cases:
+        assert outcome(name, arguments, true).checked, (name, arguments[-1])
+        assert outcome(name, arguments, true).agrees, outcome(name, arguments, true)
+        assert not outcome(name, arguments, true * (1 + 1e-6)).agrees, (name, arguments[-1])
+    (peak,) = second_method.check(
+        "FO_NETWORK_PEAK", (NETWORK, "current through C1", -1.0, 1.0), [[0.008, 0.0]]
+    )
+    assert peak.agrees
+    (peak,) = second_method.check(
+        "FO_NETWORK_PEAK", (NETWORK, "voltage at out", 0.0, 0.002), [[0.9 * v, 0.0018]]
+    )
+    assert peak.checked
+    assert not peak.agrees
+
+
 def test_a_range_is_checked_element_by_element() -> None:
     times = [[0.0], [1.0], [2.0]]
     values = [[5.0], [float(natural(1, 2, 5))], [1.0]]

@@ -38,6 +38,10 @@ class Outcome:
 
 
 NONE = Outcome(checked=False)
+_NO_ANSWER = (
+    *(TooLong, ArithmeticError, LookupError, StopIteration),
+    *(RuntimeError, TypeError, ValueError),
+)
 
 
 def how(name: str) -> str:
@@ -58,7 +62,7 @@ def check(name: str, arguments: Sequence[Any], result: Any) -> Iterator[Outcome]
             for word, value in zip(words, result[0], strict=False):
                 yield _one(name, [*given, word, *rest], value)
             return
-    if name == "FO_PEAK":
+    if name in ("FO_PEAK", "FO_NETWORK_PEAK"):
         if isinstance(result, list) and len(result) == 1 and len(result[0]) == 2:
             yield _one(name, arguments, tuple(result[0]))
         else:
@@ -99,7 +103,15 @@ def _one(name: str, arguments: Sequence[Any], result: Any) -> Outcome:
         return NONE
     try:
         answer = method(result, *given)
-    except (TooLong, ArithmeticError, ValueError, TypeError, RuntimeError):
+    except (
+        TooLong,
+        ArithmeticError,
+        ValueError,
+        TypeError,
+        RuntimeError,
+        LookupError,
+        StopIteration,
+    ):
         return NONE
     if answer is None:
         return NONE

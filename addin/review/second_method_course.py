@@ -21,6 +21,12 @@ MOST_STEPS = 200_000
 MOST_PIECES = 5_000
 
 
+Expected = tuple[float, float]
+"""A value expected, and how near to it counts as the same."""
+NEAR = 1e-12
+"""Share of the size of a course within which values near zero count as the same."""
+
+
 class TooLong(Exception):
     """An integration that would take more steps than are worth their time."""
 
@@ -162,3 +168,14 @@ class Course:
             y, gained = self._squared(y, begin, finish, power)
             total += gained if begin >= start else 0.0
         return before + total
+
+
+def arrival(r: float, course: Course, level: float) -> Expected | None:
+    """The moment at which y is at a level, from one that is near."""
+    if r <= 0:
+        return (0.0, 0.0) if course.initial == level else None
+    slope = course.rate(r)
+    if slope == 0:
+        return None
+    near = 1e-13 * course.scale / abs(slope)
+    return r - (course.at(r) - level) / slope, near
