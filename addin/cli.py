@@ -174,6 +174,39 @@ def verify(
 
 
 @app.command()
+def seal(
+    files: Annotated[list[Path], typer.Argument(help="Calc sheets that verify.")],
+) -> None:
+    """Write the fingerprint of a calc sheet that verifies into its record and its footer."""
+    from tausheet.addin.review.seal import seal as seal_file
+
+    for file in files:
+        console.print(escape(str(seal_file(file))))
+
+
+@app.command()
+def compare(
+    old: Annotated[Path, typer.Argument(help="The earlier revision of a calc sheet.")],
+    new: Annotated[Path, typer.Argument(help="The later one.")],
+    json_: Annotated[bool, typer.Option("--json", help="Every difference, for machines.")] = False,
+    out: Annotated[
+        Path | None, typer.Option("-o", "--out", help="Also write a workbook for the file.")
+    ] = None,
+    force: ForceOption = False,
+) -> None:
+    """What changed between two revisions: inputs, results, verdicts, margins, formulas."""
+    from tausheet.addin.review import compare as comparing
+
+    compared = comparing.compare(old, new)
+    if out is not None:
+        comparing.write(compared, out, force=force)
+    if json_:
+        print(json.dumps(compared.as_dict(), indent=2, ensure_ascii=False))
+    else:
+        comparing.report(console, compared)
+
+
+@app.command()
 def install(
     host: Annotated[Host, typer.Argument(help="calc: LibreOffice Calc; excel: Excel on Windows.")],
     to: Annotated[

@@ -27,7 +27,8 @@ from openpyxl.utils import range_boundaries
 from tausheet.addin.cells import CellValue
 from tausheet.functions.errors import ErrorKind, TausheetError
 
-Values = Mapping[str, Mapping[str, CellValue]]
+_Row = Mapping[str, CellValue]
+Values = Mapping[str, _Row]
 
 MOST_BYTES = 100_000_000
 """Unpacked size beyond which a workbook is not read: a calc sheet has about 1 MB."""
@@ -152,16 +153,42 @@ def sheet_parts(package: zipfile.ZipFile) -> dict[str, str]:
     return parts
 
 
-def with_values(data: bytes, values: Values) -> bytes:
-    """The workbook with a value stored in every formula cell that `values` names."""
-    with zipfile.ZipFile(io.BytesIO(data)) as package:
-        parts = sheet_parts(package)
-        changed = {
-            parts[title]: _spliced(package.read(parts[title]), cells)
-            for title, cells in values.items()
-            if cells
-        }
-    return replaced(data, changed)
+def with_values(data: bytes, values: Values, typed: Values | None = None) -> bytes:
+    """The workbook with a value stored in every formula cell that `values` names.
+
+    typed: what to put into cells that hold no formula, by sheet and address; None empties one.
+    """
+    return Stencil(data).filled(values, typed or {})
+
+
+class Stencil:
+    """A workbook whose worksheets are looked through once, to be filled again and again."""
+
+    def __init__(self, data: bytes) -> None:
+        self._data = data
+        self._sheets: dict[str, tuple[str, bytes, _Cells]] = {}
+        with zipfile.ZipFile(io.BytesIO(data)) as package:
+            self._parts = sheet_parts(package)
+
+    def filled(
+        self, values: Values, typed: Values, parts: Mapping[str, bytes] | None = None
+    ) -> bytes:
+        """The workbook with values stored, cells typed into, and some other parts replaced."""
+        changed = dict(parts or {})
+        for title in dict.fromkeys((*values, *typed)):
+            computed, entered = values.get(title, {}), typed.get(title, {})
+            if computed or entered:
+                part, xml, found = self._sheet(title)
+                changed[part] = _spliced(title, xml, found, computed, entered)
+        return replaced(self._data, changed)
+
+    def _sheet(self, title: str) -> tuple[str, bytes, _Cells]:
+        if title not in self._sheets:
+            part = self._parts[title]
+            with zipfile.ZipFile(io.BytesIO(self._data)) as package:
+                xml = package.read(part)
+            self._sheets[title] = (part, xml, _Cells(xml))
+        return self._sheets[title]
 
 
 def replaced(data: bytes, changed: Mapping[str, bytes]) -> bytes:
@@ -192,13 +219,19 @@ def _copy(made: Any, entry: zipfile.ZipInfo, raw: bytes) -> None:
     made._didModify = True
 
 
-def _spliced(xml: bytes, values: Mapping[str, CellValue]) -> bytes:
-    """A sheet's XML with the values put in; cells that `values` does not name stay."""
-    found = _Cells(xml)
+def _spliced(title: str, xml: bytes, found: _Cells, values: _Row, typed: _Row) -> bytes:
+    """A sheet's XML with the values put in; cells that are not named stay."""
     edits: list[tuple[int, int, bytes]] = []
+    open_to = 0
     for cell in found.cells:
-        if cell.address in values and (cell.has_formula or cell.in_block):
-            edits.append((cell.start, cell.end, _rewritten(xml, cell, values[cell.address])))
+        if cell.has_formula or cell.in_block:
+            if cell.address in values:
+                edits.append((cell.start, cell.end, _rewritten(xml, cell, values[cell.address])))
+        elif cell.address in typed:
+            open_to += 1
+            edits.append((cell.start, cell.end, _typed(xml, cell, typed[cell.address])))
+    if open_to != len(typed):
+        raise Unreadable(f"{title} has no open cell at one of {', '.join(typed)[:80]}")
     edits += found.added(values)
     out, at = [], 0
     for start, end, new in sorted(edits, key=lambda edit: edit[:2]):
@@ -339,6 +372,20 @@ def _rewritten(xml: bytes, cell: _Cell, value: CellValue) -> bytes:
         return head + new + closing
     at = inside.rindex(b"</")
     return head + inside[:at] + new + inside[at:]
+
+
+def _typed(xml: bytes, cell: _Cell, value: CellValue) -> bytes:
+    """A cell with a value that nothing computes; a text lies in it and is never a formula."""
+    head = re.sub(rb'\s+t="[^"]*"', b"", xml[cell.start : xml.index(b">", cell.start)])
+    head = head.rstrip(b"/").rstrip()
+    if value is None:
+        return head + b"/>"
+    kind, text = _stored(value)
+    if kind == "str":
+        inside = f' t="inlineStr"><is><t xml:space="preserve">{text}</t></is></c>'
+    else:
+        inside = (f' t="{kind}"' if kind else "") + f"><v>{text}</v></c>"
+    return head + inside.encode()
 
 
 def _stored(value: CellValue) -> tuple[str, str]:

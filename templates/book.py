@@ -33,6 +33,7 @@ CORNERS = "Worst case"
 CURVE = "Curve"
 TABLES = "Tables"
 ROWS = "Rows"
+SEALED = "Sealed"
 
 
 class Book:
@@ -60,6 +61,7 @@ class Book:
         self.tables = self.workbook.create_sheet(TABLES)
         if sheet.filled_in:
             self.rows = self.workbook.create_sheet(ROWS)
+        self.sealed = self.workbook.create_sheet(SEALED)
         self.quantity_of = {q.symbol: q.quantity for q in sheet.quantities()}
         self.check_rows: list[int] = []
         self._names: set[str] = set()

@@ -18,6 +18,7 @@ from tausheet.templates import (
     writer_heading,
     writer_inputs,
     writer_listings,
+    writer_sealed,
     writer_tables,
     writer_texts,
     writer_worst_case,
@@ -54,6 +55,7 @@ def build(
     writer_texts.cautions(page, book)
     writer_texts.basis(page, book)
     writer_texts.record(page, book, (made or date.today()).isoformat())
+    writer_sealed.write(book)
     book.main.print_area = f"A1:H{page.row}"
     paper.finish(book.workbook, book.texts.get("doc_title") or book.sheet.title)
     return book.workbook

@@ -133,7 +133,7 @@ class _Points:
             share = (
                 -BEFORE * (1 - i / at_zero) if before else PAST * (i - at_zero) / (points - at_zero)
             )
-            self.sheet[f"A{TOP + i}"] = f"=curve_span*{share!r}"
+            self.sheet[f"A{TOP + i}"] = f"=curve_span*{share:.12g}"
             if self.time_scale:
                 self.sheet[f"B{TOP + i}"] = f"=A{TOP + i}{self.time_scale}"
 

@@ -165,7 +165,7 @@ class _Corners:
             row, cells = self.first + i, {}
             for j, part in enumerate(self.parts):
                 unit = f"{self.draw_columns[j]}{row}"
-                self._put(unit, float(units[i, j]))
+                self._put(unit, round(float(units[i, j]), 12))  # every program keeps so many
                 low, high = f"{part.symbol}_lo", f"{part.symbol}_hi"
                 cells[part.symbol] = f"({low}+({high}-{low})*{unit})"
             self._put(f"{self.drawn_result}{row}", f"={renamed(self.worst.formula, cells)}")

@@ -60,6 +60,16 @@ class Reader(ExcelReader):
         super().read_worksheets()
 
 
+def workbook_of(path: Path, data: bytes, data_only: bool = False) -> Any:
+    """The workbook in bytes that `package.read` has passed, its numbers left as they are."""
+    reader = Reader(io.BytesIO(data), data_only=data_only)
+    try:
+        reader.read()
+    except Exception as error:  # openpyxl has no error of its own for a damaged part
+        raise package.Unreadable(f"{path} is damaged ({error})") from None
+    return reader.wb
+
+
 class Book:
     """The cells, formulas and names of a workbook."""
 
@@ -95,12 +105,7 @@ class Book:
     @classmethod
     def load(cls, path: Path) -> Book:
         """Read an .xlsx; Refused names the cells that this engine does not compute."""
-        reader = Reader(io.BytesIO(package.read(path)))
-        try:
-            reader.read()
-        except Exception as error:  # openpyxl has no error of its own for a damaged part
-            raise package.Unreadable(f"{path} is damaged ({error})") from None
-        return cls(reader.wb)
+        return cls(workbook_of(path, package.read(path)))
 
     def set(self, sheet: str, address: str, value: CellValue) -> None:
         """Enter a value into a cell that holds no formula; None empties it."""

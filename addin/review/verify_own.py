@@ -103,6 +103,13 @@ class Comparison:
             if cell.number_format != "@"
         }
 
+        self.sealed = {
+            (title, cell.coordinate)
+            for name in ("fingerprint", "last_verified", "sealed_results")
+            for title, cell in _cells(own, name)
+        }
+        """What sealing fills; the fingerprint itself covers it."""
+
     def findings(self) -> Iterator[Finding]:
         """Names, worksheets and the contents of cells that differ."""
         yield from self._names()
@@ -182,6 +189,8 @@ class Comparison:
         here = self.file.workbook[own.title]
         for row, column in self.places(own):
             mine, theirs = own._cells.get((row, column)), here._cells.get((row, column))
+            if mine is not None and (own.title, mine.coordinate) in self.sealed:
+                continue
             found = self._cell(f"{own.title}!{get_column_letter(column)}{row}", mine, theirs)
             if found is not None:
                 yield found

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from tausheet.addin.review import fingerprint
 from tausheet.addin.review.finding import Finding
 from tausheet.addin.review.workbook_file import WorkbookFile, shown
 from tausheet.functions import version
@@ -15,11 +16,12 @@ PARTS = ("by", "on", "signature")
 
 
 def findings(file: WorkbookFile) -> Iterator[Finding]:
-    """Inputs at fault, checks that fail, warnings, unsigned blocks, another version."""
+    """Inputs at fault, failing checks, warnings, unsigned blocks, version, fingerprint."""
     yield from _inputs(file)
     yield from _checks(file)
     yield from _signatures(file)
     yield from _version(file)
+    yield from _fingerprint(file)
 
 
 def _inputs(file: WorkbookFile) -> Iterator[Finding]:
@@ -76,3 +78,14 @@ def _version(file: WorkbookFile) -> Iterator[Finding]:
         made, here = file.value(*place), f"tausheet {version()}"
         if made != here:
             yield Finding("version", "!".join(place), shown(made), f"{here}, which is installed")
+
+
+def _fingerprint(file: WorkbookFile) -> Iterator[Finding]:
+    if fingerprint.is_sealed(file.workbook):
+        for departure in fingerprint.departures(file.workbook, file.computed):
+            yield Finding("broken fingerprint", departure.cell, departure.found, departure.sealed)
+    else:
+        places = fingerprint.places_of(file.workbook, "fingerprint")
+        where = "!".join(places[0]) if places else "fingerprint"
+        found = shown(fingerprint.written(file.workbook) or None)
+        yield Finding("not sealed", where, found, "`tausheet seal` writes it", counts=False)

@@ -14,7 +14,7 @@ from openpyxl.worksheet.formula import ArrayFormula
 
 from tausheet.addin import package
 from tausheet.addin.cells import CellValue
-from tausheet.addin.embedded.book import Book, Key, Reader
+from tausheet.addin.embedded.book import Book, Key, workbook_of
 from tausheet.addin.embedded.refused import Refused
 from tausheet.addin.embedded.values import Value
 from tausheet.functions.errors import ErrorKind, TausheetError
@@ -37,13 +37,9 @@ class WorkbookFile:
         """Whether LibreOffice did not compute it either."""
 
     def _read(self, data_only: bool) -> Any:
-        reader = Reader(io.BytesIO(self.data), data_only=data_only)
-        try:
-            reader.read()
-        except Exception as error:  # openpyxl has no error of its own for a damaged part
-            raise package.Unreadable(f"{self.path} is damaged ({error})") from None
-        _empty_blocks(reader.wb)
-        return reader.wb
+        workbook = workbook_of(self.path, self.data, data_only)
+        _empty_blocks(workbook)
+        return workbook
 
     @cached_property
     def stored(self) -> Any:
