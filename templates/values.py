@@ -4,10 +4,11 @@ from __future__ import annotations
 
 import math
 import re
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any
 
+import numpy as np
 from openpyxl.cell.cell import ILLEGAL_CHARACTERS_RE
 
 from tausheet.functions.errors import TausheetError
@@ -226,6 +227,18 @@ def readable(entry: Input | NumberColumn, number: float) -> str:
 def converted(number: float, unit: str, to: str) -> float:
     """A number in one unit, "" for base SI, expressed in another."""
     return _in(_si(number, unit), to)
+
+
+def all_converted(numbers: Sequence[float], unit: str, to: str) -> list[float]:
+    """The same for many numbers at once, which takes a thousandth of the time for each."""
+    if unit == to or not numbers:
+        return list(numbers)
+    found = np.asarray(numbers, dtype=np.float64)
+    found = np.asarray(si(found, unit)) if unit else found
+    found = np.asarray(in_unit(found, to)) if to else found
+    for place in np.flatnonzero(~np.isfinite(found))[:1]:
+        converted(numbers[place], unit, to)  # refuses with a sentence
+    return [float(number) for number in found]
 
 
 def _in(number: float, unit: str) -> float:

@@ -111,7 +111,8 @@ def _in_units(table: EntryTable, raw: Mapping[tuple[int, str], Raw], source: str
         largest = max((abs(float(value)) for value, _ in mine.values()), default=0.0)
         unit = given or values.readable(column, largest)
         typed.units[column.name] = unit
-        for place, (value, own) in mine.items():
-            same = own == unit
-            typed.cells[place] = float(value) if same else values.converted(float(value), own, unit)
+        for own in dict.fromkeys(own for _, own in mine.values()):
+            numbers = {place: float(value) for place, (value, at) in mine.items() if at == own}
+            shown = values.all_converted(list(numbers.values()), own, unit)
+            typed.cells |= dict(zip(numbers, shown, strict=True))
     return typed

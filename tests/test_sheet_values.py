@@ -98,3 +98,12 @@ def test_inputs_are_described() -> None:
     assert rows["C_unit"] == ("C_unit", "capacitance of one capacitor", "mF, µF, nF, F", "4.7 mF")
     assert rows["tapped"][2] == "yes; no"
     assert rows.keys() == {entry.symbol for entry in SHEET.entries()}
+
+
+def test_many_numbers_are_converted_as_each_alone() -> None:
+    numbers = [1.5, -2e-9, 0.0, 3.3e7, 1 / 3]
+    for unit, to in (("", "us"), ("ms", "us"), ("ms", ""), ("h", "ms"), ("s", "s")):
+        alone = [values.converted(number, unit, to) for number in numbers]
+        assert values.all_converted(numbers, unit, to) == alone
+    with pytest.raises(TausheetError, match="beyond the range of numbers"):
+        values.all_converted([1.0, 1e308], "", "us")
