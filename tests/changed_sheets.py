@@ -9,7 +9,7 @@ from __future__ import annotations
 import functools
 import random
 import re
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -48,11 +48,12 @@ def write(workbook: Any, values: dict[str, dict[str, Any]], path: Path) -> Path:
     return path
 
 
-def changed(sheet: str, name: str, seed: int, path: Path) -> tuple[str, str]:
-    """Write the demo of a sheet with one change; the class and the cell to be found."""
+def changed(sheet: str, names: Sequence[str], seed: int, path: Path) -> list[tuple[str, str]]:
+    """Write the demo of a sheet with these changes; the class and the cell of each."""
     workbook = templates.build(sheet, demo=True)
     values = {title: dict(cells) for title, cells in values_of(sheet).items()}
-    found = CHANGES[name](workbook, random.Random(f"{sheet} {name} {seed}"), values)
+    draw = random.Random(f"{sheet} {names} {seed}")
+    found = [CHANGES[name](workbook, draw, values) for name in names]
     write(workbook, values, path)
     return found
 
