@@ -15,6 +15,9 @@ from tausheet.addin.review.same_formula import pieces
 from tausheet.addin.review.verify_own import Comparison
 from tausheet.addin.review.workbook_file import WorkbookFile, formula_of, shown
 
+_RULED = 500
+"""Rows of a column in which rules for typing are compared: LibreOffice stores them no further than
+somewhat below the last row that is used."""
 _SMALLEST = 4.0
 """Points below which letters are as good as hidden."""
 _SHRUNK = 1 / 3
@@ -179,14 +182,14 @@ def _validations(sheet: Any) -> dict[str, set[Rule]]:
             "refuses" if rule.showErrorMessage and rule.errorStyle in (None, "stop") else "warns",
         )
         for area in rule.sqref.ranges:
-            for cell in _addresses(area.bounds):
+            for cell in _addresses(area.bounds, _RULED):
                 found.setdefault(cell, set()).add(says)
     return found
 
 
-def _addresses(area: tuple[int, int, int, int]) -> Iterator[str]:
+def _addresses(area: tuple[int, int, int, int], most: int = 100_000) -> Iterator[str]:
     left, top, right, bottom = area
-    for row in range(top, min(bottom, top + 100_000) + 1):
+    for row in range(top, min(bottom, top + most - 1) + 1):
         for column in range(left, right + 1):
             yield f"{get_column_letter(column)}{row}"
 

@@ -249,7 +249,10 @@ def _alike(one: list[Any], other: list[Any]) -> int:
 
 
 def _block(cell: Any) -> str:
-    return f"entered over {cell.value.ref}" if isinstance(cell.value, ArrayFormula) else ""
+    if not isinstance(cell.value, ArrayFormula):
+        return ""
+    first, _, last = cell.value.ref.partition(":")
+    return f"entered over {first}:{last or first}"
 
 
 def _equal(value: Any, expected: Any) -> bool:
