@@ -122,6 +122,41 @@ def index(
 
 
 @app.command()
+def fill(
+    name: Annotated[str, typer.Argument(help="Which calc sheet: see `tausheet list`.")],
+    table: Annotated[Path, typer.Argument(help="A .csv, its heading row the sheet's symbols.")],
+    folder: Annotated[Path, typer.Argument(help="Where to put the sheets and the summary.")],
+    workers: Annotated[int, typer.Option(min=1, max=256, help="Processes on this machine.")] = 1,
+    cluster: Annotated[
+        str | None, typer.Option(help="Address of a Dask scheduler, e.g. tcp://127.0.0.1:8786.")
+    ] = None,
+) -> None:
+    """A calc sheet for each row of a table, and a summary workbook."""
+    from rich.progress import Progress
+
+    from tausheet.addin.fill import SUMMARY
+    from tausheet.addin.fill import fill as fill_sheets
+
+    with Progress(console=Console(stderr=True)) as progress:
+        task = progress.add_task(name, total=None)
+
+        def told(done: int, of: int) -> None:
+            progress.update(task, completed=done, total=of)
+
+        results = fill_sheets(name, table, folder, workers=workers, cluster=cluster, told=told)
+    bad = [result for result in results if result.fault]
+    for result in bad:
+        console.print(escape(f"line {result.line}: {result.fault}"))
+    verdicts = [result.verdict for result in results]
+    console.print(
+        f"{len(results)} rows: {verdicts.count('PASS')} PASS, {verdicts.count('FAIL')} FAIL, "
+        f"{len(bad)} not made; {folder / SUMMARY}"
+    )
+    if bad:
+        raise typer.Exit(1)
+
+
+@app.command()
 def recalc(
     files: Annotated[list[Path], typer.Argument(help="Workbooks to compute.")],
     out: Annotated[

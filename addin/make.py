@@ -18,15 +18,21 @@ from tausheet.functions.errors import ErrorKind, TausheetError
 
 
 @dataclass(frozen=True)
-class Made:
-    """A calc sheet that was made, and what it says."""
+class Said:
+    """What a calc sheet says."""
 
-    path: Path
-    title: str
     verdict: str
     decided_by: str
     checks: list[tuple[str, str, str, str]]
     """Criterion, value used, limit, PASS or FAIL."""
+
+
+@dataclass(frozen=True)
+class Made(Said):
+    """A calc sheet that was made, and what it says."""
+
+    path: Path
+    title: str
 
 
 class NotMade(TausheetError):
@@ -46,7 +52,7 @@ def make_sheet(
     _refuse(out, force)
     workbook = templates.build(name, given, demo=demo)
     values = _write(workbook, out, force, engine)
-    return _summary(out, templates.SHEETS[name].title, workbook, values)
+    return Made(**vars(said(workbook, values)), path=out, title=templates.SHEETS[name].title)
 
 
 def make_index(out: Path, *, force: bool = False, engine: str = "embedded") -> tuple[int, int]:
@@ -79,7 +85,9 @@ def _write(workbook: Any, out: Path, force: bool, engine: str) -> Values:
     return values
 
 
-def _summary(path: Path, title: str, workbook: Any, values: Values) -> Made:
+def said(workbook: Any, values: Values) -> Said:
+    """What a computed calc sheet says, read from its workbook and its values."""
+
     def column(name: str) -> list[str]:
         return [_shown(value) for value in _named(workbook, values, name)]
 
@@ -91,7 +99,7 @@ def _summary(path: Path, title: str, workbook: Any, values: Values) -> Made:
         )
         if criterion
     ]
-    return Made(path, title, column("verdict")[0], column("decided_by")[0], checks)
+    return Said(column("verdict")[0], column("decided_by")[0], checks)
 
 
 def _named(workbook: Any, values: Values, name: str) -> list[CellValue]:

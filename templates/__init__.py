@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from datetime import date
 from typing import TYPE_CHECKING
 
@@ -14,7 +14,7 @@ from tausheet.templates.values import shown_unit
 if TYPE_CHECKING:
     from openpyxl import Workbook
 
-__all__ = ["SHEETS", "UnknownSheet", "build", "describe_inputs", "find"]
+__all__ = ["SHEETS", "UnknownSheet", "build", "check_keys", "describe_inputs", "find"]
 
 
 class UnknownSheet(TausheetError):
@@ -44,6 +44,15 @@ def build(
     from tausheet.templates import writer
 
     return writer.build(find(name), values, demo, made)
+
+
+def check_keys(name: str, keys: Iterable[str]) -> None:
+    """Refuse a key that names no input, no cell of a table and no field of the heading."""
+    from tausheet.templates import values, values_tables
+
+    blank = dict.fromkeys(keys, None)
+    values.read(find(name), blank, demo=False)
+    values_tables.read(find(name), blank, demo=False)
 
 
 def describe_inputs(name: str) -> list[tuple[str, str, str, str]]:
