@@ -70,7 +70,7 @@ class _Blank:
         self.workbook: Any = templates.build(name, given)
         packed = io.BytesIO()
         self.workbook.save(packed)
-        self.data = packed.getvalue()
+        self.stencil = package.Stencil(packed.getvalue())
         self.book = Book(self.workbook)
 
     def with_cells(self, cells: Mapping[str, CellValue]) -> Done:
@@ -83,8 +83,7 @@ class _Blank:
             self.book.set(title, address, number)
             typed.setdefault(title, {})[address] = number
         computed = self.book.values()
-        data = package.with_values(self.data, computed, typed)
-        return Done(data, said(self.workbook, computed))
+        return Done(self.stencil.filled(computed, typed), said(self.workbook, computed))
 
 
 @lru_cache(maxsize=4)
