@@ -10,6 +10,7 @@ from filled import Filled, bad_cells, bad_values
 
 from tausheet.functions.errors import ErrorKind
 from tausheet.functions.units import in_unit
+from tausheet.templates.formulas import LONG
 from tausheet.templates.model import (
     COUNT,
     Choice,
@@ -85,10 +86,10 @@ def _table(filled: Filled, table: EntryTable, draw: random.Random, spread: float
     cells = {}
     for column in table.columns:
         name = f"{table.symbol}_{column.name}"
-        for place in sorted(
-            filled.typed.keys()
-            & {f"values_of_{name}", *(f"value_of_{name}_{row + 1}" for row in range(table.rows))}
-        ):
+        places = [f"value_of_{name}_{row + 1}" for row in range(table.rows)]
+        if table.rows > LONG:  # the first cell of the whole column, which alone has a name
+            places = [f"values_of_{name}"]
+        for place in places:
             typed = filled.typed[place]
             measured = isinstance(column, NumberColumn) and column.quantity != COUNT
             if measured and isinstance(typed, (int, float)) and draw.random() < 0.5:
