@@ -128,10 +128,15 @@ def fill(
     folder: Annotated[Path, typer.Argument(help="Where to put the sheets and the summary.")],
     workers: Annotated[int, typer.Option(min=1, max=256, help="Processes on this machine.")] = 1,
     cluster: Annotated[
-        str | None, typer.Option(help="Address of a Dask scheduler, e.g. tcp://127.0.0.1:8786.")
+        str | None,
+        typer.Option(help="Address of a Dask scheduler that you trust: tcp://127.0.0.1:8786."),
     ] = None,
+    force: ForceOption = False,
 ) -> None:
-    """A calc sheet for each row of a table, and a summary workbook."""
+    """A calc sheet for each row of a table, and a summary workbook.
+
+    The same command goes on where it was interrupted. Exit status 1 when a row gave no sheet.
+    """
     from rich.progress import Progress
 
     from tausheet.addin.fill import SUMMARY
@@ -143,7 +148,9 @@ def fill(
         def told(done: int, of: int) -> None:
             progress.update(task, completed=done, total=of)
 
-        results = fill_sheets(name, table, folder, workers=workers, cluster=cluster, told=told)
+        results = fill_sheets(
+            name, table, folder, workers=workers, cluster=cluster, force=force, told=told
+        )
     bad = [result for result in results if result.fault]
     for result in bad:
         console.print(escape(f"line {result.line}: {result.fault}"))

@@ -7,14 +7,16 @@ the same command goes on where it was interrupted.
 
 from __future__ import annotations
 
-import csv
-import hashlib
+import io
 import json
 import multiprocessing
+import os
+import threading
+import zipfile
 from collections.abc import Callable, Iterator
-from concurrent.futures import FIRST_COMPLETED, Future, ProcessPoolExecutor, wait
+from concurrent.futures import FIRST_COMPLETED, BrokenExecutor, Future, ProcessPoolExecutor, wait
 from contextlib import contextmanager
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, replace
 from pathlib import Path
 from typing import Any
 
@@ -23,35 +25,14 @@ from openpyxl.cell import WriteOnlyCell
 
 from tausheet import templates
 from tausheet.addin import files, fill_sheet
+from tausheet.addin.fill_table import NotFilled, Row, read_rows
 from tausheet.functions import version
 from tausheet.functions.errors import TausheetError
-from tausheet.templates import style, values
+from tausheet.templates import style
 
 NOTES = "progress.jsonl"
 SUMMARY = "summary.xlsx"
-LONGEST_FIELD = 10_000
-"""Characters of one field of a table; more is no value of a calc sheet."""
-MOST_COLUMNS = 2_000
-
 Submit = Callable[..., Any]
-
-
-class NotFilled(TausheetError):
-    """A table or a folder that cannot be used."""
-
-
-@dataclass(frozen=True)
-class Row:
-    """One row of the table: its line in the file, and what it gives or why it gives nothing."""
-
-    line: int
-    given: dict[str, str]
-    fault: str = ""
-
-    def digest(self, name: str) -> str:
-        """What tells this row, made by this version, from any other."""
-        content = json.dumps([version(), name, self.given], sort_keys=True, ensure_ascii=False)
-        return hashlib.sha256(content.encode("utf-8", "surrogatepass")).hexdigest()
 
 
 @dataclass(frozen=True)
@@ -63,66 +44,27 @@ class Result:
     file: str
     verdict: str
     decided_by: str
+    corner: str
     fault: str
 
 
-def read_rows(name: str, table: Path) -> Iterator[Row]:
-    """The rows of a table one by one; NotFilled where the table as a whole cannot be used."""
-    csv.field_size_limit(LONGEST_FIELD)
-    try:
-        with table.open(encoding="utf-8-sig", newline="") as file:
-            reader = csv.reader(file, strict=True)
-            heading = [cell.strip() for cell in next(reader, [])]
-            _check_heading(name, table, heading)
-            while True:
-                line = reader.line_num + 1
-                try:
-                    cells = next(reader)
-                except StopIteration:
-                    return
-                except csv.Error as error:
-                    yield Row(line, {}, f"it cannot be read ({error})")
-                    continue
-                if any(cell.strip() for cell in cells):
-                    yield _row(line, heading, cells)
-    except UnicodeDecodeError:
-        raise NotFilled(f"{table} is not UTF-8 text; save it as CSV in UTF-8") from None
-    except (OSError, csv.Error) as error:
-        raise NotFilled(f"{table} cannot be read as a table: {error}") from None
+def _bad(row: Row, digest: str, fault: str) -> Result:
+    return Result(row.line, digest, "", "", "", "", fault)
 
 
-def _check_heading(name: str, table: Path, heading: list[str]) -> None:
-    if not any(heading):
-        raise NotFilled(f"{table} has no heading row; it needs one with symbols of {name}")
-    if len(heading) > MOST_COLUMNS:
-        raise NotFilled(f"{table} has {len(heading)} columns; at most {MOST_COLUMNS} are read")
-    twice = next((cell for cell in heading if heading.count(cell) > 1), None)
-    if twice is not None:
-        raise NotFilled(f'{table} has the column "{twice[:40]}" twice; keep one of them')
-    try:
-        # a blank value is allowed everywhere, so this tells unknown columns alone
-        templates.check_keys(name, heading)
-    except values.ValueRefused as error:
-        raise NotFilled(f"{table}: {error}") from None
-
-
-def _row(line: int, heading: list[str], cells: list[str]) -> Row:
-    if len(cells) != len(heading):
-        return Row(line, {}, f"it has {len(cells)} fields where the heading has {len(heading)}")
-    if any("\0" in cell for cell in cells):
-        return Row(line, {}, "it holds a NUL character")
-    texts = (cell.strip() for cell in cells)
-    return Row(line, {key: text for key, text in zip(heading, texts, strict=True) if text})
-
-
-def make(name: str, line: int, digest: str, given: dict[str, str]) -> tuple[Result, bytes]:
-    """Make the workbook of one row; runs on a worker."""
+def make(
+    name: str, line: int, digest: str, given: dict[str, str], wanted: str
+) -> tuple[Result, bytes]:
+    """Make the workbook of one row; runs on a worker, which must have the version `wanted`."""
+    if version() != wanted:
+        raise NotFilled(f"a worker has tausheet {version()}; install {wanted} there")
     file = f"{name}-{line:06d}.xlsx"
     try:
         done = fill_sheet.fill(name, given)
     except TausheetError as error:
-        return Result(line, digest, "", "", "", str(error)), b""
-    return Result(line, digest, file, done.said.verdict, done.said.decided_by, ""), done.data
+        return Result(line, digest, "", "", "", "", str(error)), b""
+    said = done.said
+    return Result(line, digest, file, said.verdict, said.decided_by, done.corner, ""), done.data
 
 
 def fill(
@@ -132,10 +74,13 @@ def fill(
     *,
     workers: int = 1,
     cluster: str | None = None,
+    force: bool = False,
     told: Callable[[int, int], None] = lambda done, of: None,
 ) -> list[Result]:
     """Make a sheet for each row; the results of all rows in their order, bad ones among them.
 
+    A sheet that is there and is not the one of its row, because the row has changed or because
+    somebody has filled it in further, is replaced with `force` alone.
     told: is told how many rows are done, of how many.
     """
     templates.find(name)
@@ -149,9 +94,9 @@ def fill(
 
         def keep(result: Result, data: bytes) -> None:
             nonlocal done
-            if data:
-                with files.replacing(folder / result.file, force=True) as temporary:
-                    temporary.write_bytes(data)
+            fault = _put(folder / result.file, data, force) if data else ""
+            if fault:
+                result = replace(result, file="", verdict="", decided_by="", corner="", fault=fault)
             notes.add(result)
             done += 1
             told(done, count)
@@ -166,9 +111,9 @@ def fill(
                 done += 1
                 told(done, count)
             elif row.fault:
-                keep(Result(row.line, digest, "", "", "", row.fault), b"")
+                keep(_bad(row, digest, row.fault), b"")
             else:
-                waiting[submit(make, name, row.line, digest, row.given)] = row
+                waiting[submit(make, name, row.line, digest, row.given, version())] = row
                 while len(waiting) >= room:
                     collect()
         while waiting:
@@ -178,13 +123,39 @@ def fill(
     return results
 
 
+def _put(path: Path, data: bytes, force: bool) -> str:
+    """Put a sheet into place; or why another one, which is there, was left alone."""
+    if not force and path.exists():
+        # an interrupted run may have put it there a moment before it could be noted
+        same = path.is_file() and _same(path.read_bytes(), data)
+        return "" if same else f"{path} is there and is another; move it away, or give --force"
+    with files.replacing(path, force=force) as temporary:
+        temporary.write_bytes(data)
+    return ""
+
+
+def _same(one: bytes, other: bytes) -> bool:
+    """Whether two workbooks differ in nothing but the time they were packed."""
+    found = []
+    for data in (one, other):
+        try:
+            with zipfile.ZipFile(io.BytesIO(data)) as parts:
+                entries = parts.infolist()
+        except zipfile.BadZipFile:
+            return False
+        found.append({e.filename: e.CRC for e in entries if e.filename != "docProps/core.xml"})
+    return found[0] == found[1]
+
+
 def _outcome(future: Any, row: Row, name: str) -> tuple[Result, bytes]:
     try:
         result: tuple[Result, bytes] = future.result()
         return result
-    except Exception as error:  # a worker that died, or a row that nobody foresaw
+    except (TausheetError, BrokenExecutor):
+        raise
+    except Exception as error:  # a row that nobody foresaw, or a worker far away that ended
         fault = f"it was not made ({type(error).__name__}: {str(error)[:200]})"
-        return Result(row.line, row.digest(name), "", "", "", fault), b""
+        return _bad(row, row.digest(name), fault), b""
 
 
 @contextmanager
@@ -198,12 +169,30 @@ def _pool(workers: int, cluster: str | None) -> Iterator[tuple[Submit, Callable[
         yield _at_once, lambda futures: futures, 1
         return
     context = multiprocessing.get_context("spawn")
-    with ProcessPoolExecutor(workers, context) as executor:
-        yield (
-            executor.submit,
-            lambda futures: wait(futures, return_when=FIRST_COMPLETED).done,
-            4 * workers,
-        )
+    try:
+        with ProcessPoolExecutor(workers, context, _end_with_parent) as executor:
+            yield (
+                executor.submit,
+                lambda futures: wait(futures, return_when=FIRST_COMPLETED).done,
+                4 * workers,
+            )
+    except BrokenExecutor:
+        raise NotFilled(
+            "a worker process ended in the middle (killed, or out of memory); the same command "
+            "goes on where this one stopped"
+        ) from None
+
+
+def _end_with_parent() -> None:
+    """In a worker: end when the process that started it was killed, instead of waiting for ever."""
+
+    def watch() -> None:
+        parent = multiprocessing.parent_process()
+        if parent is not None:
+            parent.join()
+            os._exit(1)
+
+    threading.Thread(target=watch, daemon=True).start()
 
 
 def _at_once(task: Callable[..., Any], *arguments: Any) -> Future[Any]:
@@ -286,8 +275,10 @@ class _Notes:
         return True
 
     def add(self, result: Result) -> None:
-        """Note a row as done."""
+        """Note a row as done; one that gave no sheet is tried again by the next run."""
         self._now[result.line] = result
+        if result.fault:
+            return
         self._file.write(json.dumps(asdict(result)) + "\n")
         self._file.flush()
 
@@ -296,14 +287,14 @@ class _Notes:
         return [self._now[line] for line in sorted(self._now)]
 
 
-HEADINGS = ("line", "sheet", "verdict", "decided by", "not made, because")
+HEADINGS = ("line", "sheet", "verdict", "decided by", "highest at", "not made, because")
 
 
 def _summarize(name: str, folder: Path, results: list[Result]) -> None:
     """The summary workbook: a line a row of the table, with links to the sheets."""
     book = Workbook(write_only=True)
     page = book.create_sheet("Summary")
-    for letter, width in zip("ABCDE", (8, 26, 10, 90, 90), strict=True):
+    for letter, width in zip("ABCDEF", (8, 26, 10, 90, 60, 90), strict=True):
         page.column_dimensions[letter].width = width
     page.freeze_panes = "A3"
 
@@ -331,6 +322,7 @@ def _summarize(name: str, folder: Path, results: list[Result]) -> None:
                 cell(r.file, link=r.file),
                 cell(r.verdict, bold=r.verdict == "FAIL"),
                 cell(r.decided_by),
+                cell(r.corner),
                 cell(r.fault),
             ]
         )

@@ -61,7 +61,7 @@ def make_index(out: Path, *, force: bool = False, engine: str = "embedded") -> t
 
     _refuse(out, force)
     workbook = writer_index.build()
-    said = _named(workbook, _write(workbook, out, force, engine), "agreements")
+    said = named(workbook, _write(workbook, out, force, engine), "agreements")
     return said.count(writer_index.AGREES), len(index.EXAMPLES)
 
 
@@ -89,7 +89,7 @@ def said(workbook: Any, values: Values) -> Said:
     """What a computed calc sheet says, read from its workbook and its values."""
 
     def column(name: str) -> list[str]:
-        return [_shown(value) for value in _named(workbook, values, name)]
+        return [_shown(value) for value in named(workbook, values, name)]
 
     checks = [
         (criterion, value, limit, result)
@@ -102,7 +102,7 @@ def said(workbook: Any, values: Values) -> Said:
     return Said(column("verdict")[0], column("decided_by")[0], checks)
 
 
-def _named(workbook: Any, values: Values, name: str) -> list[CellValue]:
+def named(workbook: Any, values: Values, name: str) -> list[CellValue]:
     """The cell values that a defined name stands for."""
     ((sheet, reference),) = workbook.defined_names[name].destinations
     left, top, right, bottom = range_boundaries(reference)

@@ -61,6 +61,11 @@ def write(page: Page, book: Book) -> None:
     writer_entries.name_states(book, number)
 
 
+def source_lines(source: str) -> int:
+    """Lines kept for where a value comes from; two, since one typed later must fit too."""
+    return max(2, style.lines_needed(source, style.COLUMNS["B"], 7.5))
+
+
 class _Row:
     """One input: two rows of the page."""
 
@@ -86,8 +91,7 @@ class _Row:
         description = style.lines_needed(self.entry.description, wide, 8.5)
         sentences = [sentence for _, sentence in Judgement(self.book, self.entry, 1, 1).faults]
         lines = max(
-            2,  # a source typed later must fit too
-            style.lines_needed(self.typed.source, wide, 7.5),
+            source_lines(self.typed.source),
             *(
                 style.lines_needed(s, self.page.width("C:H") - 10, 7.5, bold=True)
                 for s in sentences

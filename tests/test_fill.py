@@ -34,6 +34,10 @@ def demo_values(name: str) -> dict[str, str]:
         given[f"{entry.symbol}_source"] = demo.source
         if not isinstance(entry, Choice) and entry.tolerance is not Tolerance.NONE:
             given |= {f"{entry.symbol}_lo": demo.lowest, f"{entry.symbol}_hi": demo.highest}
+    for table in templates.SHEETS[name].filled_in:
+        for number, cells in enumerate(table.demo, start=1):
+            for column, text in zip(table.columns, cells, strict=True):
+                given[f"{table.symbol}.{column.name}.{number}"] = text
     return {key: text for key, text in given.items() if text}
 
 
@@ -61,12 +65,23 @@ def contents(book: Any) -> dict[tuple[str, str], tuple[Any, int]]:
     }
 
 
-@pytest.mark.parametrize(("name", "turns"), [("bleed", 3), ("sequence", 1)])
-def test_a_sheet_equals_that_of_new(tmp_path: Path, name: str, turns: int) -> None:
+@pytest.mark.campaign
+@pytest.mark.parametrize("name", [n for n in templates.SHEETS if n not in ("bleed", "sequence")])
+def test_every_sheet_equals_that_of_new(tmp_path: Path, name: str) -> None:
+    test_a_sheet_equals_that_of_new(tmp_path, name)
+
+
+@pytest.mark.parametrize("name", ["bleed", "sequence"])
+def test_a_sheet_equals_that_of_new(tmp_path: Path, name: str) -> None:
     given = demo_values(name) | {"doc_number": "=1+1", "project": "Quay 4"}
     first = next(e for e in templates.SHEETS[name].entries() if isinstance(e, Input) and e.units)
-    changes: tuple[dict[str, str], ...] = ({"doc_number": "Q4-7"}, {first.symbol: ""}, {})
-    for turn, changed in enumerate(changes[:turns]):
+    long = "a data sheet with a long name, " * 6
+    changes: tuple[dict[str, str], ...] = (
+        {"doc_number": "Q4-7", "doc_title": "A <title> & more"},
+        {first.symbol: "", f"{first.symbol}_source": long},
+        {},
+    )
+    for turn, changed in enumerate(changes):
         values = given | changed
         make_sheet(name, tmp_path / f"{turn}.xlsx", values)
         done = fill_sheet.fill(name, {key: text for key, text in values.items() if text})
@@ -95,6 +110,7 @@ def test_a_table_becomes_sheets_and_a_summary(tmp_path: Path) -> None:
     lines = list(page.iter_rows(min_row=3, values_only=True))
     assert [line[0] for line in lines] == [2, 3, 4, 5, 6]
     assert [line[2] for line in lines] == ["PASS", "PASS", "FAIL", "FAIL", None]
+    assert lines[0][4] == "t_safe: R_unit highest, C_unit highest, V_start highest"
     assert page["B3"].hyperlink.target == "bleed-000002.xlsx"
     sheet = load_workbook(tmp_path / "out" / "bleed-000004.xlsx", data_only=True)
     ((title, cell),) = sheet.defined_names["verdict"].destinations
@@ -170,9 +186,80 @@ def test_an_interrupted_run_goes_on_where_it_stopped(tmp_path: Path) -> None:
     kept = {result["file"] for result in noted}
     for name in kept:
         assert (out / name).stat().st_mtime_ns == before[name]
-    changed = write(tmp_path / "banks.csv", [many[0] | {"R_unit": "36 kohm"}, *many[1:]])
-    again = fill.fill("bleed", changed, out)
-    assert [result.verdict for result in again] == ["FAIL"] + ["PASS"] * 11
+
+
+def test_a_sheet_that_is_another_is_replaced_by_force_alone(tmp_path: Path) -> None:
+    table, out = write(tmp_path / "banks.csv", BANKS[:2]), tmp_path / "out"
+    fill.fill("bleed", table, out)
+    first, second = out / "bleed-000002.xlsx", out / "bleed-000003.xlsx"
+    signed = load_workbook(second)
+    signed.worksheets[0]["B24"] = "A. Checker"
+    signed.save(second)
+    before = first.read_bytes(), second.read_bytes()
+    changed = write(table, [row | {"R_unit": "36 kohm"} for row in BANKS[:2]])
+    for _ in range(2):  # a row that gave no sheet is tried again
+        results = fill.fill("bleed", changed, out)
+        assert all("is there and is another; move it away" in r.fault for r in results)
+        assert (first.read_bytes(), second.read_bytes()) == before
+    second.rename(tmp_path / "signed.xlsx")
+    assert [r.verdict for r in fill.fill("bleed", changed, out)] == ["", "FAIL"]
+    assert [r.verdict for r in fill.fill("bleed", changed, out, force=True)] == ["FAIL", "FAIL"]
+    assert first.read_bytes() != before[0]
+
+
+def test_a_sheet_in_place_that_was_not_noted_is_taken(tmp_path: Path) -> None:
+    table, out = write(tmp_path / "banks.csv", BANKS[:1]), tmp_path / "out"
+    fill.fill("bleed", table, out)
+    notes, sheet = out / fill.NOTES, out / "bleed-000002.xlsx"
+    when = sheet.stat().st_mtime_ns
+    notes.write_text(notes.read_text().splitlines()[0] + '\n{"line": 2, "dig')
+    (result,) = fill.fill("bleed", table, out)
+    assert (result.verdict, result.fault) == ("PASS", "")
+    assert sheet.stat().st_mtime_ns == when
+
+
+def children(process: subprocess.Popen[Any]) -> list[str]:
+    return Path(f"/proc/{process.pid}/task/{process.pid}/children").read_text().split()
+
+
+def running(pid: str) -> bool:
+    try:
+        return Path(f"/proc/{pid}/stat").read_text().rpartition(")")[2].split()[0] != "Z"
+    except OSError:
+        return False
+
+
+@pytest.mark.parametrize("victim", ["parent", "worker"])
+def test_one_of_several_processes_is_killed(tmp_path: Path, victim: str) -> None:
+    many = [BANKS[0] | {"doc_number": f"Q4-{n}"} for n in range(40)]
+    table, out = write(tmp_path / "banks.csv", many), tmp_path / "out"
+    run = subprocess.Popen(
+        [*COMMAND, "fill", "bleed", table, out, "--workers", "2"], stderr=subprocess.PIPE, text=True
+    )
+    limit = time.monotonic() + 200
+    while not list(out.glob("bleed-0*.xlsx")):
+        assert time.monotonic() < limit
+        time.sleep(0.02)
+    family = children(run)
+    assert len(family) >= 2
+    os.kill(run.pid if victim == "parent" else int(family[-1]), signal.SIGKILL)
+    said = run.communicate()[1]
+    while any(map(running, family)):  # nobody waits for ever
+        assert time.monotonic() < limit
+        time.sleep(0.05)
+    if victim == "worker":
+        assert run.returncode == 2
+        assert "a worker process ended in the middle" in said
+    assert len(list(out.glob("bleed-0*.xlsx"))) < 40
+    results = fill.fill("bleed", table, out, workers=2)
+    assert [result.verdict for result in results] == ["PASS"] * 40
+
+
+def test_semicolons(tmp_path: Path) -> None:
+    table = tmp_path / "t.csv"
+    table.write_bytes(b"\xef\xbb\xbfC_unit;project\n4.7 mF;Quay 4, drive\n")
+    (result,) = fill.fill("bleed", table, tmp_path / "out")
+    assert (result.verdict, result.fault) == ("FAIL", "")
 
 
 def test_the_folder_is_ours_or_empty(tmp_path: Path) -> None:

@@ -9,7 +9,7 @@ from pytest_benchmark.fixture import BenchmarkFixture
 
 from tausheet import templates
 from tausheet.addin import fill_sheet
-from tausheet.addin.fill import read_rows
+from tausheet.addin.fill_table import read_rows
 from tausheet.addin.make import make_sheet
 from tausheet.templates.model import Choice, Tolerance
 
