@@ -184,13 +184,26 @@ def recalc(
 @app.command()
 def pdf(
     files: Annotated[list[Path], typer.Argument(help="Workbooks to print.")],
+    time_limit: Annotated[
+        float, typer.Option(help="Seconds that a workbook may take; LibreOffice is then ended.")
+    ] = 120.0,
     force: ForceOption = False,
 ) -> None:
-    """The printed sheet: a .pdf beside each workbook, made by LibreOffice."""
-    from tausheet.addin.make import print_sheets
+    """The printed sheet: a .pdf beside each workbook, all made by one LibreOffice.
 
-    for printed in print_sheets(files, force=force):
-        console.print(f"{printed}")
+    Exit status 2 when a workbook was not printed; the others are.
+    """
+    from tausheet.addin.printing import print_sheets
+
+    missing = 0
+    for printed in print_sheets(files, force=force, limit=time_limit):
+        if printed.error is None:
+            console.print(f"{printed.out}")
+        else:
+            missing += 1
+            print(f"tausheet: {printed.error}", file=sys.stderr)
+    if missing:
+        raise typer.Exit(2)
 
 
 @app.command()

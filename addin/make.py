@@ -2,8 +2,7 @@
 
 from __future__ import annotations
 
-import tempfile
-from collections.abc import Iterator, Mapping, Sequence
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -132,19 +131,3 @@ def make_demo(folder: Path, *, force: bool = False) -> Iterator[Made]:
     except OSError as error:
         raise NotMade(f"the folder {folder} cannot be made: {error.strerror}") from None
     return (make_sheet(name, out, {}, demo=True, force=force) for name, out in outs.items())
-
-
-def print_sheets(paths: Sequence[Path], *, force: bool = False) -> list[Path]:
-    """A .pdf beside each workbook, printed by LibreOffice."""
-    from tausheet.addin.calc import pdf
-
-    outs = [path.with_suffix(".pdf") for path in paths]
-    for path, out in zip(paths, outs, strict=True):
-        package.read(path)
-        files.refuse_existing(out, force=force)
-    with tempfile.TemporaryDirectory() as folder:
-        for path, out in zip(paths, outs, strict=True):
-            (printed,) = pdf([path], Path(folder))
-            with files.replacing(out, force=force) as temporary:
-                temporary.write_bytes(printed.read_bytes())
-    return outs

@@ -16,16 +16,23 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
-from tausheet.addin.make import print_sheets
+from tausheet.addin.printing import print_sheets
 from tausheet.addin.recalc import recalc
 from tausheet.addin.review.verify import verify
 from tausheet.functions.errors import TausheetError
+
+
+def printed(path: Path) -> None:
+    (said,) = print_sheets([path])
+    if said.error is not None:
+        raise said.error
+
 
 COMMANDS: dict[str, Callable[[Path], Any]] = {
     "recalc": recalc,
     "calc": lambda path: recalc(path, engine="calc"),
     "verify": verify,
-    "pdf": lambda path: print_sheets([path]),
+    "pdf": printed,
 }
 
 if __name__ == "__main__":

@@ -26,7 +26,7 @@ import pytest
 from openpyxl import Workbook, load_workbook
 
 from tausheet.addin import package
-from tausheet.addin.make import print_sheets
+from tausheet.addin.printing import print_sheets
 from tausheet.addin.recalc import recalc
 from tausheet.addin.review.verify import verify
 from tausheet.functions.errors import TausheetError
@@ -390,7 +390,8 @@ def test_nothing_is_fetched_and_no_other_file_is_read(
     assert not verify(path).well
     with contextlib.suppress(TausheetError):  # it may also refuse, as for a web service
         recalc(path, engine="calc")
-    print_sheets([path])
+    (printed,) = print_sheets([path])
+    assert printed.error is None
     shown = load_workbook(path, data_only=True).worksheets[0]
     assert all("4711" not in str(shown[f"{column}5"].value) for column in "ABC")
     assert Listener.asked == []

@@ -7,10 +7,10 @@ import functools
 from collections.abc import Sequence
 from pathlib import Path
 
-from tausheet.addin.calc.driver import Book, Calc, Values
+from tausheet.addin.calc.driver import TIME_LIMIT, Book, Calc, Values
 from tausheet.addin.calc.helper_process import CalcError
 
-__all__ = ["Book", "Calc", "CalcError", "Values", "compute", "pdf"]
+__all__ = ["TIME_LIMIT", "Book", "Calc", "CalcError", "Values", "compute", "pdf"]
 
 
 def compute(path: Path) -> Values:
@@ -18,9 +18,9 @@ def compute(path: Path) -> Values:
     return _shared().compute(path)
 
 
-def pdf(paths: Sequence[Path], folder: Path | None = None) -> list[Path]:
+def pdf(paths: Sequence[Path], folder: Path | None = None, limit: float = TIME_LIMIT) -> list[Path]:
     """Print each workbook to a .pdf beside it, or in `folder`; the files written."""
-    return _shared().pdf(paths, folder)
+    return _shared().pdf(paths, folder, limit)
 
 
 @functools.cache

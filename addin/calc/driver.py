@@ -62,12 +62,18 @@ class Calc:
         """Compute a workbook and store it as .xlsx, .ods or .pdf, by the ending of `out`."""
         self._with(path, lambda book: book.store(out))
 
-    def pdf(self, paths: Sequence[Path], folder: Path | None = None) -> list[Path]:
-        """Print each workbook to a .pdf beside it, or in `folder`; the files written."""
+    def pdf(
+        self, paths: Sequence[Path], folder: Path | None = None, limit: float = TIME_LIMIT
+    ) -> list[Path]:
+        """Print each workbook to a .pdf beside it, or in `folder`; the files written.
+
+        limit: seconds that a workbook may take, from opening it to the printed file.
+        """
         printed = []
         for path in paths:
             out = (folder or path.parent) / f"{path.stem}.pdf"
-            self.store(path, out)
+            with self.helper.within(limit):
+                self.store(path, out)
             printed.append(out)
         return printed
 
@@ -119,8 +125,9 @@ class Book:
         return self
 
     def __exit__(self, *_: object) -> None:
-        with suppress(CalcError):
-            self._helper.ask("close", self._number)
+        if self._copy.exists():  # it is gone with the LibreOffice that had it open
+            with suppress(CalcError):
+                self._helper.ask("close", self._number)
         shutil.rmtree(self._copy.parent, ignore_errors=True)
 
     def set(self, cells: Mapping[str, Mapping[str, CellValue]]) -> None:

@@ -9,8 +9,9 @@ import signal
 import subprocess
 import tempfile
 import threading
-from collections.abc import Mapping
-from contextlib import suppress
+import time
+from collections.abc import Iterator, Mapping
+from contextlib import contextmanager, suppress
 from pathlib import Path
 from typing import Any
 
@@ -49,6 +50,8 @@ class HelperProcess:
         self, time_limit: float, more_extensions: Mapping[str, Mapping[str, bytes]]
     ) -> None:
         self._time_limit = time_limit
+        self._left: float | None = None
+        self._whole: float | None = None
         self._more_extensions = more_extensions
         self._process: subprocess.Popen[bytes] | None = None
         self._late = False
@@ -60,10 +63,26 @@ class HelperProcess:
         """One request of the helper; CalcError with its sentence when it is refused."""
         with self._lock:
             self._start()
-            reply = self._exchange({"do": do, "with": arguments}, self._time_limit)
+            began = time.monotonic()
+            try:
+                limit = self._time_limit if self._left is None else max(self._left, 0.001)
+                reply = self._exchange({"do": do, "with": arguments}, limit)
+            finally:
+                if self._left is not None:
+                    self._left -= time.monotonic() - began
         if "refused" in reply:
             raise CalcError(reply["refused"])
         return reply["result"]
+
+    @contextmanager
+    def within(self, limit: float) -> Iterator[None]:
+        """All that is asked in the block together takes no longer, starting LibreOffice aside."""
+        with self._lock:
+            self._left, self._whole = limit, limit
+            try:
+                yield
+            finally:
+                self._left = self._whole = None
 
     def open(self, number: int, path: Path) -> Path:
         """Open a copy of a workbook, which can be filled in and is open to nobody else."""
@@ -129,7 +148,9 @@ class HelperProcess:
         if "died" in reply:
             self._end()
             if self._late:
-                raise CalcError(f"LibreOffice took longer than {limit:g} s and was ended")
+                raise CalcError(
+                    f"LibreOffice took longer than {self._whole or limit:g} s and was ended"
+                )
             raise Died(f"LibreOffice ended in the middle: {reply['died']}")
         return reply
 
