@@ -306,3 +306,12 @@ def test_refresh_in_an_excel_without_formula2() -> None:
     api = SimpleNamespace(HasArray=False, Formula="=[1]!FO_TAU_RC(1,2)")
     refresh._enter(api)
     assert api.Formula == "=FO_TAU_RC(1,2)"
+
+
+def test_a_file_for_carrying_over_says_which_python_it_starts(tmp_path: Path) -> None:
+    """Without a word about it: a folder that administrators alone can write to."""
+    said = installation.install(to=tmp_path / "tausheet.xlam")
+    assert installation.CARRIED_OVER in said
+    assert (tmp_path / "tausheet.xlam").is_file()
+    named = installation.install(to=tmp_path / "other.xlam", interpreter=r"D:\py\pythonw.exe")
+    assert r"D:\py\pythonw.exe" in named

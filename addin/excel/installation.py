@@ -36,21 +36,22 @@ def start_up_folder() -> Path:
     return Path(roaming) / "Microsoft" / "Excel" / "XLSTART"
 
 
+CARRIED_OVER = r"C:\Program Files\tausheet\Scripts\pythonw.exe"
+"""The Python that a file written elsewhere starts, in a folder that administrators alone fill."""
+
+
 def install(to: Path | None = None, interpreter: str | None = None, force: bool = False) -> str:
     """Make the add-in file and put it where Excel starts it; with `to`, only write it there."""
     if to is None and sys.platform != "win32":
         raise NotInstalled(NOT_WINDOWS)
-    if interpreter is None:
-        if sys.platform != "win32":
-            raise NotInstalled(
-                "the add-in file names the Python that Excel starts; give its full path on the "
-                r"Windows machine: --interpreter C:\...\Scripts\pythonw.exe"
-            )
-        interpreter = sys.executable
+    interpreter = interpreter or (sys.executable if sys.platform == "win32" else CARRIED_OVER)
     if to is not None:
         with replacing(to, force=force) as temporary:
             functions = addin_file.make(temporary, interpreter, generator())
-        return f"{to}: an add-in with {len(functions)} functions; open it in Excel on Windows."
+        return (
+            f"{to}: an add-in with {len(functions)} functions, for Excel on Windows. It starts the "
+            f"Python at {interpreter} and no other; --interpreter names another place."
+        )
     _try_out(interpreter)
     target = start_up_folder() / addin_file.FILE_NAME
     # made outside the folder: Excel opens whatever lies in it
