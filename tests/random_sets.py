@@ -4,10 +4,13 @@ from __future__ import annotations
 
 import math
 import random
+from pathlib import Path
 from typing import Any
 
-from filled import Filled, bad_cells, bad_values
+from filled import Filled, assert_refused, bad_cells, bad_values, differences
 
+from tausheet import templates
+from tausheet.addin import calc
 from tausheet.functions.errors import ErrorKind
 from tausheet.functions.units import in_unit
 from tausheet.templates.formulas import LONG
@@ -28,7 +31,7 @@ NEAREST = 1e-11
 """How near a value may come to its limit, as a share of it: two engines may differ below that."""
 
 
-def valid(filled: Filled, draw: random.Random) -> dict[str, Any]:
+def a_valid_set(filled: Filled, draw: random.Random) -> dict[str, Any]:
     """Cells of a set that the sheet's own rules accept, no check of which is a tie.
 
     What a rule refuses is drawn again, everything now and then; nearer to the demo each time.
@@ -48,7 +51,7 @@ def valid(filled: Filled, draw: random.Random) -> dict[str, Any]:
     raise AssertionError(f"{filled.sheet.name}: no valid set in {TRIES} draws")
 
 
-def invalid(
+def an_invalid_set(
     filled: Filled, base: dict[str, Any], draw: random.Random
 ) -> tuple[Entry | EntryTable, dict[str, Any]]:
     """An input or a table, and the cells of a valid set but for it, which is at fault."""
@@ -167,3 +170,25 @@ def assert_verdict_follows(filled: Filled) -> None:
             assert filled[f"check_{check.key}"] == ("PASS" if kept else "FAIL"), check.key
     passed = set(filled.checks().values()) == {"PASS"} and filled.inputs_are_valid()
     assert filled["verdict"] == ("PASS" if passed else "FAIL")
+
+
+def compare_in_calc(
+    office: calc.Calc, folder: Path, name: str, valid: int, invalid: int, seed: int
+) -> None:
+    """Every cell of every set in one open document: numbers to 1e-12, all else exactly."""
+    draw = random.Random(seed)
+    here = Filled.demo(templates.SHEETS[name], folder)
+    path = folder / f"{name}.xlsx"
+    with office.open(path) as book:
+        there = Filled(here.sheet, path, book)
+        assert differences(here.put(), there.put()) == []
+        sets = []
+        for number in range(valid):
+            sets.append(cells := a_valid_set(here, draw))
+            assert_both_ways_agree(here)
+            assert_verdict_follows(here)
+            assert differences(here, there.put(**cells)) == [], (number, cells)
+        for number in range(invalid):
+            entry, cells = an_invalid_set(here, draw.choice(sets), draw)
+            assert_refused(here.put(**cells), entry)
+            assert differences(here, there.put(**cells)) == [], (number, cells)

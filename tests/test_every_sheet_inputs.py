@@ -136,8 +136,8 @@ def test_what_is_left_from_earlier_sets_is_computed_anew(demo: Any) -> None:
     draw = random.Random(7)
     filled: Filled = demo("bleed")
     for _ in range(10):
-        cells = random_sets.valid(filled, draw)
-        filled.put(**random_sets.invalid(filled, cells, draw)[1])
+        cells = random_sets.a_valid_set(filled, draw)
+        filled.put(**random_sets.an_invalid_set(filled, cells, draw)[1])
     filled.put(**cells)
     fresh = writer.build(short(filled.sheet), demo=True)
     for name, value in cells.items():

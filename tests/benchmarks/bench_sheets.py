@@ -63,7 +63,7 @@ def bench_new(benchmark: BenchmarkFixture, tmp_path: Path, name: str) -> None:
         subprocess.run([*command, "--force"], check=True, capture_output=True)
 
     new()
-    benchmark.pedantic(new, rounds=3)
+    benchmark.pedantic(new, rounds=1)
     report(benchmark, a_new_process(), "a new process that imports openpyxl and numpy", 2)
 
 
