@@ -9,7 +9,8 @@ from typing import Any
 
 import pypdfium2
 import pytest
-from openpyxl import load_workbook
+from openpyxl import Workbook, load_workbook
+from openpyxl.worksheet.formula import ArrayFormula
 from typer.testing import CliRunner
 
 from tausheet import templates
@@ -18,7 +19,7 @@ from tausheet.addin.calc import Calc
 from tausheet.addin.cli import app
 from tausheet.addin.embedded.book import Book, workbook_of
 from tausheet.addin.make import make_sheet
-from tausheet.addin.review import fingerprint
+from tausheet.addin.review import canonical, fingerprint
 from tausheet.addin.review.seal import NotSealed, seal
 from tausheet.addin.review.verify import verify
 
@@ -103,6 +104,18 @@ def test_saving_in_libreoffice_keeps_it_and_prints_it(sealed: Path, tmp_path: Pa
     document = pypdfium2.PdfDocument(printed)
     for page in document:
         assert f"fingerprint {mark}" in page.get_textpage().get_text_bounded()
+
+
+def test_one_spelling_of_a_formula() -> None:
+    ours = "=IF(TRUE, FO_TAU_RC('Curve'!$A$1:$A$1, 0.1), 1E-09)"
+    theirs = "of=IF(TRUE(),ORG.TAUSHEET.FUNCTIONS.FO_TAU_RC(Curve!$A$1,0.1),0.000000001)"[2:]
+    assert canonical.formula(ours) == canonical.formula(theirs)
+    assert canonical.formula(ours) != canonical.formula(ours.replace("$A$1:$A$1", "$A$1:$A$2"))
+    assert canonical.formula('="a b"') != canonical.formula('="ab"')
+    cell = Workbook().worksheets[0]["B4"]
+    for block in ("B4", "B4:B4"):  # as openpyxl and LibreOffice write an array formula of a cell
+        cell.value = ArrayFormula(block, "=SUM(A1:A3*2)")
+        assert canonical.content(cell) == "block B4 =SUM(a1:a3*2)"
 
 
 @pytest.mark.campaign
@@ -219,8 +232,6 @@ def test_what_does_not_verify_is_not_sealed(tmp_path: Path) -> None:
 
 
 def test_a_workbook_without_a_record_is_not_sealed(tmp_path: Path) -> None:
-    from openpyxl import Workbook
-
     Workbook().save(tmp_path / "other.xlsx")
     with pytest.raises(NotSealed, match="is no calc sheet"):
         seal(tmp_path / "other.xlsx")

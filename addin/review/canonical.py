@@ -27,7 +27,7 @@ def content(cell: Any) -> str:
     if value is None:
         return ""
     if isinstance(value, ArrayFormula):
-        return f"block {value.ref} {formula(str(value.text))}"
+        return f"block {reference(value.ref)} {formula(str(value.text))}"
     if cell.data_type == "f":
         return f"formula {formula(str(value))}"
     return f"error {value}" if cell.data_type == "e" else constant(value)
