@@ -86,6 +86,20 @@ def test_resistor_as_suppressor_against_integration(demo: Filled) -> None:
     assert demo["t_rel_max"] == pytest.approx(max(times), rel=1e-12)
 
 
+def test_a_resistor_is_fed_by_the_supply_while_the_coil_is_on(demo: Filled) -> None:
+    """V^2 / R at the highest supply and the lowest resistance, besides the energy of the coil."""
+    demo.put(**RESISTOR, lowest_of_R_sup=-5, highest_of_R_sup=5)
+    power = demo["E_take"] * 240 / 3600 + 226**2 / 142.5
+    assert demo["P_take"] == pytest.approx(power, rel=1e-12)
+    assert (demo["check_power"], demo["verdict"]) == ("FAIL", "FAIL")
+    demo.put(**RESISTOR, lowest_of_R_sup=-5, highest_of_R_sup=5, value_of_P_sup=361)
+    assert demo["check_power"] == "PASS"
+    demo.put(**RESISTOR, lowest_of_R_sup=-5, highest_of_R_sup=5, value_of_P_sup=360)
+    assert demo["check_power"] == "FAIL"
+    demo.put(value_of_suppressor="diode")
+    assert demo["P_stay"] == 0
+
+
 def test_a_hot_coil_at_low_supply_that_never_pulls_in_fails_without_a_time(demo: Filled) -> None:
     demo.put(lowest_of_V_sup=130)
     assert (demo["check_holds"], demo["check_pull"]) == ("FAIL", "FAIL")

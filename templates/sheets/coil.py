@@ -384,11 +384,19 @@ STRESS = Block(
             "-V_clamp*t_zero_hand)/R_cold_hand)",
         ),
         Quantity(
+            "P_stay",
+            "power of a suppressor resistor while the coil is on",
+            f"IF({RESISTOR},V_sup_hi^2/R_sup_lo,0)",
+            "power",
+            "P_stay = V_sup,hi^2 / R_sup,lo: the supply feeds it too; a diode blocks it, so 0",
+        ),
+        Quantity(
             "P_take",
             "power of the suppressor at the highest rate",
-            "E_take*n_op",
+            "E_take*n_op+P_stay",
             "power",
-            "P_take = E_take n_op",
+            "P_take = E_take n_op + P_stay, as if the coil were on without end",
+            f"E_take_hand/(1/n_op)+IF({RESISTOR},V_sup_hi/R_sup_lo*V_sup_hi,0)",
         ),
     ),
 )
@@ -520,9 +528,9 @@ CAUTIONS = (
         "channels, where a fall of the load can hurt someone.",
     ),
     Caution(
-        "Hot coil",
+        "Hot coil, hot resistor",
         "A coil in service is hot enough to burn, and its resistance is then higher than measured "
-        "cold.",
+        "cold. A resistor as suppressor is hot as long as the coil is on.",
     ),
 )
 
@@ -536,7 +544,8 @@ BASIS = Basis(
     assumptions=(
         "Inductance is constant until the armature moves, and constant again once it has.",
         "The coil has settled before it is switched off; the switch opens at once.",
-        "With a resistor as suppressor there is no diode in series.",
+        "With a resistor as suppressor there is no diode in series, so that it carries the supply "
+        "while the coil is on: reckoned without end, which is on the safe side.",
     ),
     sources=(
         "Copper, 0.00393 per kelvin at 20 °C: IEC 60028 (from memory; confirm against the edition "
