@@ -114,6 +114,16 @@ def test_a_dump_path_that_is_open_never_passes(demo: Filled) -> None:
     assert "dump_path_may_stay_open" in demo.put(value_of_path="switched in").warnings()
 
 
+def test_a_dump_resistor_without_a_diode_is_heated_in_service(demo: Filled) -> None:
+    """V^2 / R at the voltage of the coil, warm (24 A, 9.5 ohm) or cold (28 A, 7.8 ohm)."""
+    assert demo.put()["P_serv"] == 0
+    demo.put(value_of_path="always connected")
+    assert demo["P_serv"] == pytest.approx((24 * 9.5) ** 2 / 44.65, rel=1e-13)
+    assert "dump_resistor_fed_in_service" in demo.warnings()
+    demo.put(value_of_path="always connected", highest_of_I_start=32)
+    assert demo["P_serv"] == pytest.approx((32 * 7.8) ** 2 / 44.65, rel=1e-13)
+
+
 def test_iron_has_its_warnings(demo: Filled) -> None:
     assert "saturated_inductance" in demo.put(highest_of_L_coil=4.5).warnings()
     with_iron = demo.put()["t_field"]

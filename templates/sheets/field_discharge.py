@@ -35,6 +35,7 @@ from tausheet.templates.model import (
 BY_MASS = 'rated_by="mass and material"'
 BY_ENERGY = 'rated_by="energy"'
 SOLID = 'iron="solid"'
+FED = 'path="always connected"'
 
 COIL = Group(
     "Coil",
@@ -130,8 +131,8 @@ DUMP = Group(
         Choice(
             "path",
             "how the dump resistor is connected",
-            ("always connected", "switched in"),
-            Demo("always connected", "schematic of the magnet supply"),
+            ("behind a diode", "always connected", "switched in"),
+            Demo("behind a diode", "schematic of the magnet supply"),
         ),
         Choice(
             "rated_by",
@@ -339,6 +340,14 @@ WORST_BLOCK = Block(
             "t_field = longest t_end of part 6, and t_iron with solid iron",
         ),
         Quantity(
+            "P_serv",
+            "power of the dump resistor in service, before the dump",
+            f"IF({FED},MAX(I_start*R_coil,I_start_hi*R_coil_lo)^2/R_dump_lo,0)",
+            "power",
+            "always connected: (I_start R_coil)^2 / R_dump,lo, warm or cold, whichever is more; "
+            "0 behind a diode or when switched in",
+        ),
+        Quantity(
             "T_dump",
             "temperature of the dump resistor after it",
             f"IF({BY_MASS},T_amb+E_dump_hi/(m_dump*c_dump),NA())",
@@ -389,6 +398,12 @@ HAZARDS = (
         'path="switched in"',
         "Should the dump path not close, nothing limits the voltage but an arc: {E_coil_hi} then "
         "goes into whatever breaks down first. Connect it always, or prove it before each opening.",
+    ),
+    Hazard(
+        "Dump resistor fed in service",
+        FED,
+        "With no diode before it the dump resistor turns {P_serv} into heat as long as the coil is "
+        "on: T_amb, or E_rated, has to be that of a resistor so loaded for long.",
     ),
     Hazard(
         "Saturated inductance",
@@ -455,7 +470,8 @@ CAUTIONS = (
     Caution(
         "Hot resistor",
         "The dump resistor heats within a second and stays hot. Guard it, and let it cool before "
-        "the next dump unless it is rated for the sequence.",
+        "the next dump unless it is rated for the sequence. A diode before it that fails short "
+        "lets the supply heat it all the time; one that fails open leaves the coil without a path.",
     ),
     Caution(
         "Voltage at both ends",
@@ -473,6 +489,7 @@ BASIS = Basis(
     ),
     assumptions=(
         "Current commutates at once into the dump path; V_arc is constant while current flows.",
+        "Behind a diode, or switched in, the dump resistor carries nothing before the dump.",
         "Inductance is constant during one discharge, at whichever of its limits is worse.",
         "The resistor gives no heat off during the dump, and its resistance lies within its limits "
         "hot and cold.",
@@ -496,7 +513,8 @@ SHEET = Sheet(
     "and that the insulation stands the voltage and the dump resistor the heat.",
     picture=Picture(
         "field_discharge.png",
-        "The supply opens at t = 0; the current goes on through R_dump, and V_arc where it drops.",
+        "The supply opens at t = 0; the current goes on through R_dump, and V_arc where it drops. "
+        "Drawn behind a diode; without one the supply feeds R_dump too.",
     ),
     groups=(COIL, DUMP, AIM),
     blocks=(DISCHARGE, ENERGY, WORST_BLOCK),
