@@ -132,13 +132,14 @@ BODY = Group(
         ),
         Input(
             "tau_two",
-            "its time constant, shortest",
+            "its time constant",
             "time",
             ("min", "s", "h"),
             1e-3,
             1e6,
             "a body that takes no time, or weeks, is not meant",
-            Demo("25 min", "heat run of the braking resistor"),
+            Demo("25 min", "heat run of the braking resistor", "-15 %", "15 %"),
+            Tolerance.PERCENT,
             needed=TWO,
         ),
         Input(
@@ -272,19 +273,19 @@ SETTLING = Block(
         Quantity(
             "tau_slow",
             "slowest time constant",
-            f"MAX(tau_one_hi,IF({TWO},tau_two,0))",
+            f"MAX(tau_one_hi,IF({TWO},tau_two_hi,0))",
             "time",
-            "tau_slow: the longer of the two",
+            "tau_slow: the longer of the two, each at its longest",
         ),
         Quantity(
             "T_one",
             "first on-time, at its hottest",
             f"T_amb_hi+R_one_hi*FO_STEP(t_on_hi,tau_one_lo,0,P_on_hi)"
-            f"+IF({TWO},R_two*FO_STEP(t_on_hi,tau_two,0,P_on_hi),0)",
+            f"+IF({TWO},R_two*FO_STEP(t_on_hi,tau_two_lo,0,P_on_hi),0)",
             "temperature",
             "T_one = T_amb,hi + sum of R P_on,hi (1 - exp(-t_on,hi / tau))",
             "T_amb_hi+R_one_hi*P_on_hi*(1-EXP(-t_on_hi/tau_one_lo))"
-            f"+IF({TWO},R_two*P_on_hi*(1-EXP(-t_on_hi/tau_two)),0)",
+            f"+IF({TWO},R_two*P_on_hi*(1-EXP(-t_on_hi/tau_two_lo)),0)",
         ),
         Quantity(
             "T_avg",
@@ -296,11 +297,13 @@ SETTLING = Block(
         ),
         Quantity(
             "t_settle",
-            "time until every on-time ends within dT_ok of the settled highest",
-            "FO_TIME_UNTIL_BELOW(dT_ok,tau_slow,MAX(T_max_max-T_one,0),0)",
+            "time after the first on-time until each ends within dT_ok of the settled highest",
+            "FO_TIME_UNTIL_BELOW(dT_ok,tau_slow,T_avg-T_amb_hi,0)",
             "time",
-            "t_settle = tau_slow ln((T_max - T_one) / dT_ok), as if all that is missing were the "
-            "slowest body's: on the safe side",
+            "t_settle = tau_slow ln((T_avg - T_amb,hi) / dT_ok): the first on-time ends below the "
+            "settled highest by less than the mean rise; all of it taken as the slowest body's",
+            f"MAX(0,MAX(tau_one_hi,IF({TWO},tau_two_hi,0))*LN((P_on_hi*t_on_hi+P_off*t_off_lo)"
+            f"/(t_on_hi+t_off_lo)*(R_one_hi+IF({TWO},R_two,0))/dT_ok))",
         ),
         Quantity(
             "n_settle",
@@ -382,20 +385,20 @@ CURVE = Curve(
     y_title="temperature",
     caption="From cold, the first on-time begins at 0; at ambient before. Lines through the ends "
     "of the on-times and of the off-times: in each cycle the temperature goes from one to the "
-    "other and back. Worst case: power, on-time, R_one and ambient highest, off-time and tau_one "
-    "lowest.",
+    "other and back. Worst case: power, on-time, R_one and ambient highest, off-time and both "
+    "time constants lowest.",
     traces=(
         Trace(
             "ends of on-times, worst case",
             _both(
                 _peaks("R_one_hi", "tau_one_lo", *_HOT),
-                _peaks("R_two", "tau_two", *_HOT),
+                _peaks("R_two", "tau_two_lo", *_HOT),
                 "T_amb_hi",
             ),
         ),
         Trace(
             "ends of off-times, worst case",
-            _both(_valleys("R_one_hi", "tau_one_lo"), _valleys("R_two", "tau_two"), "T_amb_hi"),
+            _both(_valleys("R_one_hi", "tau_one_lo"), _valleys("R_two", "tau_two_lo"), "T_amb_hi"),
         ),
         Trace(
             "ends of on-times, nominal",
@@ -408,6 +411,7 @@ CURVE = Curve(
     ),
     levels=(Level("allowed", "T_lim"),),
     marks=(Mark("settled within dT_ok", "t_settle", "T_max_max"),),
+    points=90,
     from_zero=False,
 )
 
@@ -438,8 +442,8 @@ BASIS = Basis(
     method=(
         "Each body: tau dT/dt + T = R_th P(t), a square of power from cold. Settled extremes and "
         "every cycle's end in closed form; the rises of two bodies add up.",
-        "Worst case over every corner of power, times, R_one, tau_one and ambient; the second body "
-        "is entered at its worst.",
+        "Worst case over every corner of power, times, R_one, both time constants and ambient; "
+        "R_two is entered at its highest. Settling is reckoned with the longest time constants.",
     ),
     assumptions=(
         "Thermal resistance and time constant do not change with temperature, and are those of the "
@@ -476,8 +480,11 @@ SHEET = Sheet(
         WorstCase(
             "T_max",
             f"T_amb+{_settled('max')}",
-            tuple(Varies(part) for part in ("P_on", "t_on", "t_off", "R_one", "tau_one", "T_amb")),
-            draws=100,
+            tuple(
+                Varies(part)
+                for part in ("P_on", "t_on", "t_off", "R_one", "tau_one", "tau_two", "T_amb")
+            ),
+            draws=60,
         ),
     ),
     checks=CHECKS,
