@@ -534,7 +534,8 @@ CURVE = Curve(
     unit="V",
     y_title="load voltage",
     caption="Settled; a period begins at 0, and before it the end of the last one is held. "
-    "Greatest ripple: shortest time constant, lowest frequency, duty nearest to 50 %.",
+    "Greatest ripple: shortest time constant, lowest frequency, duty nearest to 50 %; the lines "
+    "lie about its mean, not about the nominal one.",
     traces=(
         Trace(
             "greatest ripple",
